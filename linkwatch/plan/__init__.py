@@ -1,0 +1,1 @@
+"""What was promised: codecs, framing, the cost of a call and the admission budget. Pure."""

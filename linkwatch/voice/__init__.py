@@ -1,0 +1,1 @@
+"""From frames to calls. Pure: no clock, no socket."""

@@ -1,0 +1,1 @@
+"""Promised against seen: ledger, alarms, snapshots. Pure."""
