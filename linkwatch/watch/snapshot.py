@@ -149,7 +149,7 @@ class StreamState:
         codec: Codec name, or "unknown".
         codec_evidence: "sdp", "static", "plan", "inferred" or "unknown".
         packet_ms: Packetisation, or None while it is not known.
-        packets, expected, lost, lost_a3, duplicates, reordered: Counts, as docs/figures.md has them.
+        packets, expected, lost, lost_a3, duplicates, reordered: Counts; see docs/figures.md.
         jitter_ms, jitter_mean_ms, jitter_max_ms: RFC 3550 jitter at the end, over all, at worst;
             None while the sender's clock is not known.
         dscp: The marking of its last packet.
