@@ -14,6 +14,11 @@ Anything else that escapes is a fault of this program.
 from typing import ClassVar
 
 
+def one_line(text: str) -> str:
+    """Returns the text as one line without control characters, whatever it quotes."""
+    return " ".join("".join(c if c.isprintable() else " " for c in text).split())
+
+
 class LinkwatchError(Exception):
     """Something a person can put right, told in one line.
 
@@ -38,7 +43,7 @@ class LinkwatchError(Exception):
             line += f"; wanted {self.wanted}"
         if self.remedy:
             line += f". {self.remedy}"
-        return " ".join("".join(c if c.isprintable() else " " for c in line).split())
+        return one_line(line)
 
 
 class InputError(LinkwatchError):

@@ -7,6 +7,20 @@ All rates are kbit/s of 1000 bit/s, all times nanoseconds since 1970-01-01 UTC.
 from dataclasses import dataclass
 from enum import StrEnum
 
+from linkwatch.voice.figures import StreamState
+
+__all__ = [
+    "Alarm",
+    "CallState",
+    "DirectionState",
+    "Kind",
+    "LinkState",
+    "Severity",
+    "Snapshot",
+    "StreamState",
+    "TapHealth",
+]
+
 
 class Severity(StrEnum):
     """How bad it is, in the words of ITU-T X.733."""
@@ -138,62 +152,6 @@ class LinkState:
 
 
 @dataclass(frozen=True, slots=True)
-class StreamState:
-    """One RTP direction as it stands.
-
-    Attributes:
-        source, destination: Address and port, such as "10.20.1.7:16384".
-        ssrc: The synchronisation source.
-        payload_type: The payload type of most of its packets.
-        media: "audio", "video" or "unknown".
-        codec: Codec name, or "unknown".
-        codec_evidence: "sdp", "static", "plan", "inferred" or "unknown".
-        packet_ms: Packetisation, or None while it is not known.
-        packets, expected, lost, lost_a3, duplicates, reordered: Counts; see docs/figures.md.
-        jitter_ms, jitter_mean_ms, jitter_max_ms: RFC 3550 jitter at the end, over all, at worst;
-            None while the sender's clock is not known.
-        dscp: The marking of its last packet.
-        dscp_steady: False where its packets carried more than one marking.
-        first, last: When its first and its last packet were seen.
-        ip_octets: Octets of all its IP packets.
-        link_octets: The same after the first link's framing that it crosses.
-        link_kbps: Its rate on that link over its lifetime.
-        active: Whether it sends now.
-    """
-
-    source: str
-    destination: str
-    ssrc: int
-    payload_type: int
-    media: str
-    codec: str
-    codec_evidence: str
-    packet_ms: float | None
-    packets: int
-    expected: int
-    lost: int
-    lost_a3: int
-    duplicates: int
-    reordered: int
-    jitter_ms: float | None
-    jitter_mean_ms: float | None
-    jitter_max_ms: float | None
-    dscp: int
-    dscp_steady: bool
-    first: int
-    last: int
-    ip_octets: int
-    link_octets: int
-    link_kbps: float
-    active: bool
-
-    @property
-    def loss_percent(self) -> float:
-        """Packets lost of those expected, in percent."""
-        return 100.0 * self.lost / self.expected if self.expected else 0.0
-
-
-@dataclass(frozen=True, slots=True)
 class CallState:
     """A call as it stands: one or two streams between two pairs of addresses and ports.
 
@@ -215,6 +173,7 @@ class CallState:
         dscp: The marking, the worse direction's where they differ.
         marking_right: Whether every stream is marked as planned.
         mos: Estimated listening quality, or None where it is not estimated.
+        conversation: The first call of its conversation: a relayed or moved leg shares it.
         streams: Its streams.
     """
 
@@ -236,6 +195,7 @@ class CallState:
     dscp: int
     marking_right: bool
     mos: float | None
+    conversation: int
     streams: tuple[StreamState, ...]
 
 

@@ -1,0 +1,47 @@
+"""Which links a call crosses, and which way its streams go there."""
+
+from functools import lru_cache
+from ipaddress import IPv4Address, IPv6Address, ip_address
+
+from linkwatch.plan.planfile import LinkPlan, Plan
+from linkwatch.voice.calls import Call, End
+from linkwatch.voice.streams import address_text
+
+TO_SITE, FROM_SITE = "to_site", "from_site"
+OTHER_WAY = {TO_SITE: FROM_SITE, FROM_SITE: TO_SITE}
+
+
+class Crossings:
+    """Where calls go, by the site prefixes of a plan's links."""
+
+    def __init__(self, plan: Plan) -> None:
+        self._links = plan.links
+
+    def first_link(self, source: str, destination: str) -> int:
+        """Returns the index of the first link between two addresses; 0 where there is none."""
+        ends = ip_address(source), ip_address(destination)
+        crossed = (i for i, link in enumerate(self._links) if _direction(link, *ends))
+        return next(crossed, 0)
+
+    def of(self, call: Call) -> tuple[str | None, ...]:
+        """Returns for each link which way the call's forward streams cross it, or None."""
+        return self._between(*call.ends)
+
+    @lru_cache(maxsize=65_536)  # noqa: B019 - one plan lives as long as its monitor
+    def _between(self, one: End, other: End) -> tuple[str | None, ...]:
+        ends = ip_address(address_text(one[0])), ip_address(address_text(other[0]))
+        return tuple(_direction(link, *ends) for link in self._links)
+
+
+def _direction(
+    link: LinkPlan, source: IPv4Address | IPv6Address, destination: IPv4Address | IPv6Address
+) -> str | None:
+    """Returns which way a stream crosses a link.
+
+    Without site prefixes every stream counts; then the end with the lower address is taken for
+    the site, which is a guess, and a snapshot says so.
+    """
+    if not link.site_prefixes:
+        lower_first = (source.version, int(source)) <= (destination.version, int(destination))
+        return FROM_SITE if lower_first else TO_SITE
+    return link.crossing(source, destination)
