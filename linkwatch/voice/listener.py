@@ -4,7 +4,7 @@ from collections.abc import Callable, Mapping, Sequence
 
 from linkwatch.frames import FrameBatch
 from linkwatch.plan.framing import Framing
-from linkwatch.voice.calls import Call, CallBook
+from linkwatch.voice.calls import Call, CallBook, most_at_once
 from linkwatch.voice.figures import StreamState
 from linkwatch.voice.headers import datagrams
 from linkwatch.voice.recognise import Recogniser
@@ -68,4 +68,4 @@ class Listener:
         return self._table.statistics()
 
 
-__all__ = ["Call", "Listener", "StreamState", "StreamStatistics"]
+__all__ = ["Call", "Listener", "StreamState", "StreamStatistics", "most_at_once"]

@@ -10,8 +10,7 @@ import numpy as np
 
 from linkwatch.frames import CounterReading, FrameBatch, TapStatistics
 from linkwatch.plan.planfile import Plan
-from linkwatch.voice.calls import most_at_once
-from linkwatch.voice.listener import Listener, StreamState
+from linkwatch.voice.listener import Listener, StreamState, most_at_once
 from linkwatch.watch.alarms import AlarmBook
 from linkwatch.watch.calls import call_state
 from linkwatch.watch.crossing import Crossings
