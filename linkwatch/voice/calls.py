@@ -5,6 +5,7 @@ people hold: a leg that a relay passes on, or that moves to another port, keeps 
 that share one at nearly the same time are one conversation.
 """
 
+from collections import deque
 from collections.abc import Iterable, Iterator
 from dataclasses import dataclass, field
 from typing import NamedTuple
@@ -33,20 +34,20 @@ class Call:
     Attributes:
         id: Its number, from 1.
         ends: The two ends, each an address as a 128-bit number and a port, the lower first.
+        conversation: The id of the first call of its conversation.
         streams: Its streams by serial number: where an SSRC changed there are more than two.
         forward: Serial numbers of those that go from the first end to the second.
         carried: What each stream carried since the last report.
         up: Whether any stream sends now.
-        conversation: The id of the first call of its conversation.
     """
 
     id: int
     ends: tuple[End, End]
+    conversation: int
     streams: dict[int, StreamState] = field(default_factory=dict)
     forward: set[int] = field(default_factory=set)
     carried: dict[int, Carried] = field(default_factory=dict)
     up: bool = True
-    conversation: int = 0
 
     @property
     def start(self) -> int:
@@ -69,20 +70,25 @@ class CallBook:
 
     Args:
         keep_ended: How many calls that have ended to keep; None keeps all.
+
+    Attributes:
+        live: The calls of which a stream has not ended, by id.
+        ended: The calls that have ended, in the order of their end.
     """
 
     def __init__(self, keep_ended: int | None = None) -> None:
-        self._keep_ended = keep_ended
-        self._calls: dict[int, Call] = {}
+        self.live: dict[int, Call] = {}
+        self.ended: deque[Call] = deque(maxlen=keep_ended)
         self._between: dict[tuple[End, End], Call] = {}
         self._of_stream: dict[int, Call] = {}
-        self._last_id = self.ended_and_gone = 0
+        self._with_ssrc: dict[int, Call] = {}
+        self._last_id = 0
 
     def __iter__(self) -> Iterator[Call]:
-        return iter(self._calls.values())
+        return iter(sorted((*self.live.values(), *self.ended), key=lambda call: call.id))
 
     def __len__(self) -> int:
-        return len(self._calls)
+        return len(self.live) + len(self.ended)
 
     def update(self, reports: Iterable[StreamReport]) -> None:
         """Takes in how every stream stands; a stream that is missing has ended."""
@@ -98,11 +104,12 @@ class CallBook:
             heard.add(report.serial)
         for serial in [serial for serial in self._of_stream if serial not in heard]:
             call = self._of_stream.pop(serial)
-            call.carried.pop(serial, None)
+            del call.carried[serial]
             call.streams[serial] = call.streams[serial]._replace(active=False)
-        for call in self._calls.values():
-            call.up = bool(call.carried) and any(s.active for s in call.streams.values())
-        self._drop_oldest()
+        for call in list(self.live.values()):
+            call.up = any(stream.active for stream in call.streams.values())
+            if not call.carried:
+                self._end(call)
 
     def _joined(self, report: StreamReport) -> Call:
         """Returns the call that a new stream belongs to, a new one if need be."""
@@ -112,34 +119,29 @@ class CallBook:
         # A stream that comes after a silence on both ways is the next call over the same ports.
         if call is None or report.state.first - call.end > SILENT_NS:
             self._last_id += 1
-            call = Call(self._last_id, between)
-            call.conversation = self._conversation(report.state, call.id)
-            self._calls[call.id] = self._between[between] = call
+            call = Call(self._last_id, between, self._conversation(report.state, self._last_id))
+            self.live[call.id] = self._between[between] = call
         self._of_stream[report.serial] = call
+        self._with_ssrc[report.state.ssrc] = call
         if source == between[0]:
             call.forward.add(report.serial)
         return call
 
     def _conversation(self, stream: StreamState, otherwise: int) -> int:
         """Returns the conversation that a new call's first stream carries on."""
-        if stream.ssrc <= TELLING_SSRC:
+        other = self._with_ssrc.get(stream.ssrc)
+        if stream.ssrc <= TELLING_SSRC or other is None:
             return otherwise
-        for call in self._of_stream.values():
-            for other in call.streams.values():
-                same = other.ssrc == stream.ssrc and other.payload_type == stream.payload_type
-                if same and stream.first - other.last <= MOVED_NS:
-                    return call.conversation
-        return otherwise
+        return other.conversation if stream.first - other.end <= MOVED_NS else otherwise
 
-    def _drop_oldest(self) -> None:
-        if self._keep_ended is None:
-            return
-        ended = [call for call in self._calls.values() if not call.carried]
-        for call in ended[: max(0, len(ended) - self._keep_ended)]:
-            del self._calls[call.id]
-            if self._between.get(call.ends) is call:
-                del self._between[call.ends]
-            self.ended_and_gone += 1
+    def _end(self, call: Call) -> None:
+        """Puts a call among the ended, and forgets what only a live one is looked up by."""
+        self.ended.append(self.live.pop(call.id))
+        if self._between.get(call.ends) is call:
+            del self._between[call.ends]
+        for stream in call.streams.values():
+            if self._with_ssrc.get(stream.ssrc) is call:
+                del self._with_ssrc[stream.ssrc]
 
 
 def most_at_once(spans: Iterable[tuple[int, int]]) -> int:

@@ -119,8 +119,8 @@ def header_octets(octets: Octets, found: Datagrams, flags: npt.NDArray[np.uint8]
     return length
 
 
-# Consecutive steps that must be right, so five different numbers that advance.
-PROBATION_STEPS = 4
+# Different numbers in a row that must advance, the first included.
+PROBATION_NUMBERS = 5
 # "Timestamps that go with the numbers": at most 200 ms of a 100 kHz clock a packet (RFC 3551 4.2
 # has receivers accept packets of 200 ms), or such a clock running through a silence.
 MOST_TICKS_A_PACKET = 20_000
@@ -134,13 +134,13 @@ class Probation:
 
     Attributes:
         timestamp, time: Of the packet with the highest number so far; time in nanoseconds.
-        steps: Right steps in a row.
+        numbers: Numbers in a row that advanced.
         moved: Whether timestamps have moved in these.
     """
 
     timestamp: int
     time: int
-    steps: int = 0
+    numbers: int = 0
     moved: bool = False
 
     def passed(self, advance: int, timestamp: int, time: int) -> bool:
@@ -151,10 +151,10 @@ class Probation:
         if ticks > advance * MOST_TICKS_A_PACKET + silence:
             self.fail()
         else:
-            self.steps += 1
+            self.numbers += 1
             self.moved |= ticks > 0
-        return self.steps >= PROBATION_STEPS and self.moved
+        return self.numbers >= PROBATION_NUMBERS and self.moved
 
     def fail(self) -> None:
         """Begins again: a number jumped, or a timestamp did not go with it."""
-        self.steps, self.moved = 0, False
+        self.numbers, self.moved = 0, False

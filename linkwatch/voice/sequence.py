@@ -9,7 +9,6 @@ number unless one is a copy of the other.
 """
 
 from dataclasses import dataclass
-from enum import Enum, auto
 
 from linkwatch.frames import Longs
 
@@ -20,13 +19,10 @@ MEMORY = 128  # numbers remembered to know a copy; a power of two, not below MAX
 START = MODULUS  # the first segment's cycle: leaves room below for packets that come late
 
 
-class Verdict(Enum):
-    """What a packet's number says."""
-
-    NEW = auto()
-    LATE = auto()  # a new number, but below the highest
-    COPY = auto()  # a number already received
-    STRAY = auto()  # a jump that nothing has confirmed: not of the stream, until a second one
+# What a packet's number says, where it does not advance on those before it.
+LATE = 0  # a new number, but below the highest
+COPY = -1  # a number already received
+STRAY = -2  # a jump that nothing has confirmed: not of the stream, until a second one does
 
 
 @dataclass(slots=True)
@@ -64,7 +60,7 @@ class Numbering:
     def beginning_with(cls, sequence: int, memory: Longs) -> "Numbering":
         """Returns the numbering of a source whose first packet has this number, not yet taken."""
         first = START + sequence
-        return cls(memory, highest=first, lowest=first, base=first)
+        return cls(memory, highest=first - 1, lowest=first, base=first)
 
     @property
     def expected(self) -> int:
@@ -81,38 +77,41 @@ class Numbering:
         """A.3's figure: copies count as received, and the first packet as the lowest."""
         return self.before_a3 + self.highest - self.base + 1 - self.received
 
-    def take(self, sequence: int) -> Verdict:
-        """Counts one packet by its number (0 to 65535)."""
+    def take(self, sequence: int) -> int:
+        """Counts one packet by its number (0 to 65535).
+
+        Returns by how much it advances on the highest before it (1 or more), or LATE, COPY or
+        STRAY.
+        """
         ahead = (sequence - self.highest) % MODULUS
         if MAX_DROPOUT <= ahead <= MODULUS - MAX_MISORDER:
             if sequence != self.awaited:
                 self.awaited = (sequence + 1) % MODULUS
                 self.strays += 1
-                return Verdict.STRAY
+                return STRAY
             self._begin_again(sequence)
-            ahead = 0
+            ahead = 1
         elif ahead > MODULUS - MAX_MISORDER:
             ahead -= MODULUS
         number = self.highest + ahead
         self.received += 1
         if not self._remember(number):
             self.copies += 1
-            return Verdict.COPY
+            return COPY
         self.different += 1
         self.lowest = min(self.lowest, number)
         if number < self.highest:
             self.late += 1
-            return Verdict.LATE
+            return LATE
         self.highest = number
-        return Verdict.NEW
+        return ahead
 
     def _begin_again(self, sequence: int) -> None:
         """Begins a segment with the stray that announced it and the number that confirms it."""
         self.before = self.expected
         self.before_a3 = self.lost_a3
         cycle = (self.highest // MODULUS + 2) * MODULUS
-        self.highest = cycle + sequence
-        self.lowest = self.base = self.highest - 1
+        self.highest = self.lowest = self.base = cycle + sequence - 1
         self.segment += 1
         self.strays -= 1
         self.received = 1

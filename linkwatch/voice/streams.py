@@ -19,12 +19,19 @@ from linkwatch.frames import Longs
 from linkwatch.plan.framing import Framing
 from linkwatch.voice.figures import StreamState
 from linkwatch.voice.groups import Groups, grouping
-from linkwatch.voice.headers import Mask
 from linkwatch.voice.index import KeyIndex
 from linkwatch.voice.lanes import Lanes
 from linkwatch.voice.recognise import Recogniser
 from linkwatch.voice.rtp import Probation, RtpPackets
-from linkwatch.voice.sequence import MAX_DROPOUT, MEMORY, MODULUS, START, Numbering, Verdict
+from linkwatch.voice.sequence import (
+    LATE,
+    MAX_DROPOUT,
+    MEMORY,
+    MODULUS,
+    START,
+    STRAY,
+    Numbering,
+)
 
 MOST_SOURCES = 32_768  # on probation or accepted; a source costs about 2 kB
 SECOND_NS = 1_000_000_000
@@ -134,7 +141,9 @@ class StreamTable:
         packets, row = packets.chosen(order), row[order]
         groups = Groups.of(row)
         self._count(groups, packets)
-        fresh, segment = self._number(groups, packets)
+        advance, segment = self._number(groups, packets)
+        self._probe(groups, advance, packets)
+        fresh = advance >= LATE
         kept = slice(None) if fresh.all() else np.flatnonzero(fresh)
         self._lanes.hear(
             row[kept],
@@ -227,8 +236,8 @@ class StreamTable:
         source["first"][rows] = packets.time[first]
         source["dscp"][rows] = packets.dscp[first]
         source["awaited"][rows] = -1
-        for name in ("highest", "lowest", "base"):
-            source[name][rows] = sequence
+        source["highest"][rows] = sequence - 1
+        source["lowest"][rows] = source["base"][rows] = sequence
         times, timestamps = packets.time[first].tolist(), packets.timestamp[first].tolist()
         for row, time, timestamp in zip(rows.tolist(), times, timestamps, strict=True):
             self._probation[row] = Probation(timestamp, time)
@@ -249,57 +258,55 @@ class StreamTable:
             source["dscp_changed"][row] |= ~groups.all(same)
             source["dscp"][row] = packets.dscp[groups.last]
 
-    def _number(self, groups: Groups, packets: RtpPackets) -> tuple[Mask, Longs]:
+    def _number(self, groups: Groups, packets: RtpPackets) -> tuple[Longs, Longs]:
         """Follows the sequence numbers.
 
-        Returns whether each packet is the first with its number, and how often its source's
-        numbering had begun again by then.
+        Returns by how much each packet's number advances on those before it (LATE, COPY or STRAY
+        where it does not), and how often its source's numbering had begun again by then.
         """
         source, row = self._source, groups.owner
         highest = source["highest"][row]
         step = (packets.sequence - groups.before(packets.sequence, highest)) % MODULUS
-        advances = groups.all((step > 0) & (step < MAX_DROPOUT))
-        regular = advances & (source["state"][row] == ACCEPTED)
-        fresh = np.ones(len(packets), np.bool_)
-        segment = groups.each(source["segment"][row])
-        for group in np.flatnonzero(~regular):
-            self._follow(groups, group, packets, fresh, segment)
-        row, gained = row[regular], groups.total(step)[regular]
-        source["highest"][row] += gained
-        source["received"][row] += groups.size[regular]
-        source["different"][row] += groups.size[regular]
+        regular = groups.all((step > 0) & (step < MAX_DROPOUT))
         gone = np.cumsum(step)
         number = gone + groups.each(highest - gone[groups.start] + step[groups.start])
         which = slice(None) if regular.all() else np.flatnonzero(groups.each(regular))
-        place = number[which] % MEMORY
-        self._memory[groups.each(groups.owner)[which], place] = number[which]
-        return fresh, segment
+        self._memory[groups.each(row)[which], number[which] % MEMORY] = number[which]
+        source["highest"][row[regular]] = number[groups.last[regular]]
+        source["received"][row[regular]] += groups.size[regular]
+        source["different"][row[regular]] += groups.size[regular]
+        segment = groups.each(source["segment"][row])
+        for group in np.flatnonzero(~regular):
+            self._follow(groups, group, packets.sequence, step, segment)
+        return step, segment
 
     def _follow(
-        self, groups: Groups, group: int, packets: RtpPackets, fresh: Mask, segment: Longs
+        self, groups: Groups, group: int, sequence: Longs, advance: Longs, segment: Longs
     ) -> None:
-        """Follows the numbers of one source a packet at a time, and its probation."""
+        """Follows the numbers of one source a packet at a time; fills in the last two columns."""
         row, start = int(groups.owner[group]), int(groups.start[group])
         state = self._source[row]
-        numbers = {name: int(state[name]) for name in NUMBERING}
-        numbering = Numbering(self._memory[row], **numbers)
-        probation = self._probation.get(row)
+        numbering = Numbering(self._memory[row], *(int(state[name]) for name in NUMBERING))
         for packet in range(start, start + int(groups.size[group])):
-            highest = numbering.highest
-            verdict = numbering.take(int(packets.sequence[packet]))
-            fresh[packet] = verdict in (Verdict.NEW, Verdict.LATE)
+            advance[packet] = numbering.take(int(sequence[packet]))
             segment[packet] = numbering.segment
-            if probation is None:
-                continue
-            timestamp, time = int(packets.timestamp[packet]), int(packets.time[packet])
-            advance = numbering.highest - highest
-            if verdict is Verdict.STRAY or advance >= MODULUS:
-                probation.fail()
-            elif advance > 0 and probation.passed(advance, timestamp, time):
-                self._accept(row)
-                probation = None
         for name in NUMBERING:
             self._source[name][row] = getattr(numbering, name)
+
+    def _probe(self, groups: Groups, advance: Longs, packets: RtpPackets) -> None:
+        """Looks whether sources on probation have shown that they are RTP."""
+        for group in np.flatnonzero(self._source["state"][groups.owner] == ON_PROBATION):
+            row, start = int(groups.owner[group]), int(groups.start[group])
+            probation = self._probation[row]
+            for packet in range(start, start + int(groups.size[group])):
+                step = int(advance[packet])
+                if step == STRAY:
+                    probation.fail()
+                elif step > 0 and probation.passed(
+                    step, int(packets.timestamp[packet]), int(packets.time[packet])
+                ):
+                    self._accept(row)
+                    break
 
     def _accept(self, row: int) -> None:
         """Makes a source a stream."""

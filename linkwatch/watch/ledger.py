@@ -55,14 +55,12 @@ class Ledger:
         """Returns the state of each link, from the calls and what they carried in the interval.
 
         Args:
-            calls: All calls known.
+            calls: The live calls.
             interval_s: The seconds in which they carried what they carried.
             load: The interface counters over the same time, where there are any.
         """
         sums = [{TO_SITE: _Sum(), FROM_SITE: _Sum()} for _ in self._plan.links]
         for call in calls:
-            if not call.carried:
-                continue
             for index, forward in enumerate(self._crossings.of(call)):
                 if forward:
                     self._enter(call, index, forward, sums[index])

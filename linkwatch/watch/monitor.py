@@ -10,7 +10,7 @@ import numpy as np
 
 from linkwatch.frames import CounterReading, FrameBatch, TapStatistics
 from linkwatch.plan.planfile import Plan
-from linkwatch.voice.listener import Listener, StreamState, most_at_once
+from linkwatch.voice.listener import Call, Listener, StreamState, most_at_once
 from linkwatch.watch.alarms import AlarmBook
 from linkwatch.watch.calls import call_state
 from linkwatch.watch.crossing import Crossings
@@ -25,6 +25,7 @@ SILENCE_NS = 60 * SECOND_NS
 # A clock that was set back this far is believed.
 SET_BACK_NS = 2 * SECOND_NS
 KEPT_ENDED = 1000
+ENDED_SHOWN = 50
 
 
 class Monitor:
@@ -117,7 +118,7 @@ class Monitor:
         """Closes the interval that ends at `now`."""
         interval_s = self._every / SECOND_NS
         self._listener.conclude(now)
-        calls = self._listener.calls
+        calls = self._listener.calls.live.values()
         load = _load(self._counters, counters)
         self._counters = counters
         links = self._ledger.enter(calls, interval_s, load)
@@ -148,16 +149,25 @@ class Monitor:
             links=links,
             calls_up=crossing,
             elsewhere_up=len(up) - crossing,
-            calls=self.calls(interval_s) if self._with_calls else (),
+            calls=self._shown(interval_s) if self._with_calls else (),
             alarms=self._alarms.standing(),
             cleared=self._alarms.cleared(),
         )
 
-    def calls(self, interval_s: float = 1.0) -> tuple[CallState, ...]:
+    def _shown(self, interval_s: float) -> tuple[CallState, ...]:
+        """Returns the calls a snapshot carries: the live ones, and the last that have ended."""
+        book = self._listener.calls
+        lately = tuple(book.ended)[-ENDED_SHOWN:]
+        shown = sorted((*book.live.values(), *lately), key=lambda call: call.id)
+        return tuple(self._call_state(call, interval_s) for call in shown)
+
+    def _call_state(self, call: Call, interval_s: float) -> CallState:
+        return call_state(call, self._plan, self._crossings, self._ledger, interval_s)
+
+    def calls(self) -> tuple[CallState, ...]:
         """Returns the calls that are kept, in the order in which they were found."""
         return tuple(
-            call_state(call, self._plan, self._crossings, self._ledger, interval_s)
-            for call in self._listener.calls
+            self._call_state(call, self._every / SECOND_NS) for call in self._listener.calls
         )
 
     def streams(self) -> dict[int, StreamState]:

@@ -25,9 +25,7 @@ def test_a_constant_difference_gives_the_exact_series(difference, packets, jitte
     assert jitter_of([difference] * packets)[-1] == pytest.approx(jitter, abs=5e-5)
 
 
-runs = st.lists(
-    st.lists(st.floats(0, 1e6), min_size=1, max_size=1500), min_size=1, max_size=4
-)
+runs = st.lists(st.lists(st.floats(0, 1e6), min_size=1, max_size=1500), min_size=1, max_size=4)
 
 
 @given(runs=runs, before=st.floats(0, 1e6))
