@@ -1,1 +1,1 @@
-"""The terminal dashboard."""
+"""The terminal dashboard: it shows snapshots, and computes no figure of its own."""
