@@ -55,11 +55,12 @@ class Board(App[int]):
 
     CSS_PATH = "board.tcss"
     HORIZONTAL_BREAKPOINTS = [(0, "-narrow"), (120, "-wide")]  # noqa: RUF012 - as the base has it
-    VERTICAL_BREAKPOINTS = [(0, "-short"), (30, "-tall")]  # noqa: RUF012 - as the base has it
+    VERTICAL_BREAKPOINTS = [(0, "-short"), (30, "-tall"), (50, "-towering")]  # noqa: RUF012 - as the base has it
     BINDINGS: ClassVar[list[BindingType]] = [
-        Binding("p", "pause", "pause", id="board.pause",
+        Binding("p", "pause", "hold", id="board.pause",
                 tooltip="hold the picture; counting goes on"),
-        Binding("s", "save", "save", id="board.save", tooltip="save the screen as an SVG file"),
+        Binding("s", "save", "save", show=False, id="board.save",
+                tooltip="save the screen as an SVG file"),
         Binding("question_mark", "help", "help", id="board.help", key_display="?",
                 tooltip="keys and signs"),
         Binding("q", "quit", "quit", id="board.quit", tooltip="leave"),

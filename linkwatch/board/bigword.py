@@ -1,5 +1,6 @@
 """The word that is read from three metres: may one more call come in?"""
 
+DOT_ROWS = 5
 # Letters of three or five by five dots: only those that the words need.
 DOTS = {
     "R": ("##.", "#.#", "##.", "#.#", "#.#"),
@@ -24,19 +25,19 @@ DOTS = {
     "7": ("###", "..#", "..#", "..#", "..#"),
     "8": ("###", "#.#", "###", "#.#", "###"),
     "9": ("###", "#.#", "###", "..#", "###"),
-    " ": ("..", "..", "..", "..", ".."),
+    " ": (".", ".", ".", ".", "."),
 }
 HALVES = {(False, False): " ", (True, False): "▀", (False, True): "▄", (True, True): "█"}
 
 
 def dots(word: str) -> list[str]:
-    """Returns a word as five rows of dots; letters that are not needed by any word are left out."""
+    """Returns a word as five rows of dots; letters that no word needs are left out."""
     letters = [DOTS[letter] for letter in word if letter in DOTS]
-    return [".".join(row) for row in zip(*letters, strict=True)]
+    return [".".join(rows[row] for rows in letters) for row in range(DOT_ROWS)]
 
 
 def half_size(word: str) -> list[str]:
-    """Returns a word as three rows of half blocks."""
+    """Returns a word as three rows of half blocks, one cell per dot."""
     rows = dots(word)
     rows.append("." * len(rows[0]))
     return [

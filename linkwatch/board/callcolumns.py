@@ -40,7 +40,7 @@ class Row:
         if call.crosses and not call.as_planned:
             return "unplanned"
         if call.crosses and not call.marking_right:
-            return "mis-marked"
+            return "marking"
         if self.alarmed:
             return "poor"
         return "up" if call.crosses else "elsewhere"
@@ -92,10 +92,10 @@ COLUMNS = (
         right=False,
     ),
     Column("ms", 4, lambda row: decimal(row.call.packet_ms, 4, 0), going=4),
-    Column("kbit/s", 7, lambda row: decimal(row.call.used_kbps, 7)),
+    Column("kbit/s", 6, lambda row: decimal(row.call.used_kbps, 6)),
     Column("reserved", 8, lambda row: decimal(row.call.reserved_kbps, 8), going=2),
     Column("loss%", 5, lambda row: decimal(row.call.loss_percent, 5), going=7),
-    Column("jit.ms", 6, lambda row: decimal(row.call.jitter_ms, 6), going=6),
+    Column("jitter", 6, lambda row: decimal(row.call.jitter_ms, 6), going=6),
     Column("MOS", 4, lambda row: decimal(row.call.mos, 4, 2), going=1),
     Column(
         "mark",
@@ -107,7 +107,7 @@ COLUMNS = (
         going=5,
     ),
     Column("age", 7, _age, going=3),
-    Column("state", 10, lambda row: row.state, right=False),
+    Column("state", 9, lambda row: row.state, right=False),
 )
 
 
@@ -120,7 +120,7 @@ def columns_for(width: int) -> tuple[tuple[Column, ...], int]:
     columns = list(COLUMNS)
     order = sorted((column for column in COLUMNS if column.going), key=lambda c: c.going)
     while True:
-        left = width - sum(column.width + 1 for column in columns)
+        left = width - sum(column.width + 1 for column in columns) + 1
         if left >= ENDS_LEAST or not order:
             return tuple(columns), max(left, len(ARROW) + 2)
         columns.remove(order.pop(0))
@@ -151,9 +151,11 @@ def call_line(row: Row, width: int) -> Line:
     call = row.call
     tone = "plain" if call.up and call.crosses else "faint"
     shown: list[Piece] = []
+    gap = ""
     for column in columns:
         text = column.text(row) if column.text else ends(call, left)
         judged = text.endswith(SIGN) or (column.title == "state" and row.troubled)
         cell = padded(text, column.width or left, right=column.right)
-        shown.append(Piece(f"{cell} ", "alarm" if judged and call.up else tone))
+        shown.append(Piece(gap + cell, "alarm" if judged and call.up else tone))
+        gap = " "
     return tuple(shown)

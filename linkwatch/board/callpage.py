@@ -24,7 +24,7 @@ WHO: tuple[Figure, ...] = (
 SPEECH: tuple[Figure, ...] = (
     ("codec", lambda s: f"{s.codec}, by {s.codec_evidence}"),
     ("payload type", lambda s: f"{s.payload_type}, {s.media}"),
-    ("packetisation", lambda s: f"{decimal(s.packet_ms, 1, 0)} ms" if s.packet_ms else NOTHING),
+    ("packetisation", lambda s: f"{s.packet_ms:g} ms" if s.packet_ms else NOTHING),
     ("marking", lambda s: marking_name(s.dscp) + ("" if s.dscp_steady else ", not steady")),
 )
 PACKETS: tuple[Figure, ...] = (
@@ -36,9 +36,9 @@ PACKETS: tuple[Figure, ...] = (
     ("out of order", lambda s: f"{s.reordered:,}"),
 )
 TIMING: tuple[Figure, ...] = (
-    ("jitter now", lambda s: f"{decimal(s.jitter_ms, 1)} ms"),
-    ("jitter mean", lambda s: f"{decimal(s.jitter_mean_ms, 1)} ms"),
-    ("jitter highest", lambda s: f"{decimal(s.jitter_max_ms, 1)} ms"),
+    ("jitter now", lambda s: f"{decimal(s.jitter_ms, 8)} ms"),
+    ("jitter mean", lambda s: f"{decimal(s.jitter_mean_ms, 8)} ms"),
+    ("jitter highest", lambda s: f"{decimal(s.jitter_max_ms, 8)} ms"),
 )
 COST: tuple[Figure, ...] = (
     ("on the link", lambda s: f"{s.link_kbps:.1f} kbit/s"),
@@ -69,8 +69,14 @@ def call_lines(snapshot: Snapshot, call: CallState, width: int) -> list[Line]:
     shown = _head(row, width)
     shown += _alarms(snapshot, call, width)
     out, back = both_streams(call)
-    titles = padded("here → there", each), padded("there → here", each)
-    shown.append(line(" " * (LABEL_CELLS + 1), Piece(f"{titles[0]}  {titles[1]}", "strong")))
+    shown.append(
+        line(
+            " " * (LABEL_CELLS + 1),
+            _title("here → there", out, each),
+            "  ",
+            _title("there → here", back, each),
+        )
+    )
     for title, figures in SECTIONS:
         shown.append(heading(f" {title}", width))
         for label, figure in figures:
@@ -85,22 +91,29 @@ def call_lines(snapshot: Snapshot, call: CallState, width: int) -> list[Line]:
     return shown
 
 
+def _title(way: str, stream: StreamState | None, cells: int) -> Piece:
+    if stream is None:
+        return Piece(padded(f"{way}  ! nothing heard", cells), "alarm")
+    return Piece(padded(way, cells), "strong")
+
+
 def _cell(stream: StreamState | None, figure: Callable[[StreamState], str], cells: int) -> Piece:
     if stream is None:
-        return Piece(padded("nothing heard", cells), "warn")
+        return Piece(padded(NOTHING, cells), "faint")
     return Piece(padded(figure(stream), cells), "plain" if stream.active else "faint")
 
 
 def _head(row: Row, width: int) -> list[Line]:
     call = row.call
     tone = "alarm" if row.troubled else "good" if call.up else "faint"
+    leg = "" if call.conversation == call.id else f"  a leg of call {call.conversation}"
     links = ", ".join(safe(name, 20) for name in call.crosses) or "no link of the plan"
     lasted = duration((row.now if call.up else call.end) - call.start).strip()
     return [
         line(
             Piece(f" Call {call.id}", "strong"),
             Piece(f"  {'! ' if row.troubled else ''}{row.state}", tone),
-            Piece(f"  since {clock(call.start)}, {lasted}  over {links}", "faint"),
+            Piece(f"  since {clock(call.start)}, {lasted}  over {links}{leg}", "faint"),
         ),
         line(f" {padded(call.here, 26).rstrip()} ↔ {safe(call.there, max(10, width - 30))}"),
         line(

@@ -1,10 +1,11 @@
 """A link as a block of lines: its word, and each direction's budget as a row of places."""
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 from linkwatch.board.bigword import full_size, half_size
 from linkwatch.board.lines import BLANK, Line, Piece, beside, fitted, line, plain, width
-from linkwatch.board.places import places_line, places_of, scale_for, used_line
+from linkwatch.board.places import TAKEN, places_line, places_of, scale_for, used_line
 from linkwatch.board.text import NOTHING, kbps, padded, safe
 from linkwatch.board.verdict import Verdict, verdict_on, verdict_on_direction
 from linkwatch.watch.snapshot import DirectionState, LinkState, Snapshot
@@ -12,8 +13,9 @@ from linkwatch.watch.snapshot import DirectionState, LinkState, Snapshot
 NAME_CELLS = 24
 LABEL_CELLS = 10
 VERDICT_CELLS = 9
-WORD_CELLS = 29  # half-size words of up to two digits, with air on both sides
-WIDE_WORD_CELLS = 62
+SHORT_CALLS_CELLS = 6
+WORD_CELLS = 30  # half-size words of up to two digits, with air on both sides
+WIDE_WORD_CELLS = 60
 LOAD, LOAD_FREE = "▬", "·"
 
 
@@ -40,15 +42,24 @@ def link_block(snapshot: Snapshot, link: LinkState, space: Space) -> list[Line]:
         return [_head(link, verdict, space), *_ways(link, space.width - 1, space, hearing=hearing)]
     large = space.airy and space.width >= 2 * WIDE_WORD_CELLS
     cells = WIDE_WORD_CELLS if large else WORD_CELLS
-    rows = (full_size if large else half_size)(verdict.word) if verdict.word else []
-    left = [line(" ", Piece(row, verdict.tone)) for row in rows] or [BLANK] * 3
+    left = _large(verdict, full_size if large else half_size, cells)
     left.append(BLANK)
     left.append(line(" ", Piece(verdict.meaning, verdict.tone)))
     left.append(line(" ", Piece(verdict.aside, "faint")))
+    if not link.directions_known:
+        left.append(line(" ", Piece("directions guessed", "warn")))
     if not large:
         left.remove(BLANK)
     right = _ways(link, space.width - cells - 1, space, hearing=hearing)
     return [_head(link, None, space), *beside(left, cells, right)]
+
+
+def _large(verdict: Verdict, size: Callable[[str], list[str]], cells: int) -> list[Line]:
+    """Returns the word in large letters. A number that finds no space is left to the sentence."""
+    rows = size(verdict.word)
+    if rows and len(rows[0]) > cells - 2:
+        rows = size(verdict.word.split()[0])
+    return [line(" ", Piece(row, verdict.tone)) for row in rows]
 
 
 def _head(link: LinkState, verdict: Verdict | None, space: Space) -> Line:
@@ -58,17 +69,18 @@ def _head(link: LinkState, verdict: Verdict | None, space: Space) -> Line:
         pieces += ["  ", Piece(verdict.word or NOTHING, verdict.tone)]
     cost = f"  {safe(link.planned_call, 24)} costs {link.call_kbps:.1f} kbit/s each way"
     pieces.append(Piece(cost, "faint"))
-    framing = f" over {safe(link.framing, 40)}"
-    guess = "" if link.directions_known else "directions guessed: no site_prefixes in the plan"
     shown = line(*pieces)
-    if guess:
-        framing = f" · {guess}"
-    if width(shown) + len(framing) <= space.width:
-        shown += (Piece(framing, "warn" if guess else "faint"),)
-    elif guess:
-        room = space.width - len(guess) - 3
-        shown = (*fitted(shown[:2], min(room, NAME_CELLS + 1)), Piece(f"  {guess}", "warn"))
+    for more in (Piece(f" over {safe(link.framing, 40)}", "faint"), *_guess(link)):
+        if width(shown) + width((more,)) <= space.width:
+            shown += (more,)
     return shown
+
+
+def _guess(link: LinkState) -> Line:
+    """Returns the warning that directions are guessed, where they are."""
+    if link.directions_known:
+        return BLANK
+    return line(Piece("  no site_prefixes in the plan: directions guessed", "warn"))
 
 
 def _ways(link: LinkState, cells: int, space: Space, *, hearing: bool) -> list[Line]:
@@ -93,8 +105,8 @@ def _way(label: str, link: LinkState, way: DirectionState, cells: int) -> list[L
     places = places_of(link, way)
     if places is None:
         return [
-            line(name, Piece("no limit in the plan: nothing to hold calls against", "faint")),
-            line(Piece(padded(calls, LABEL_CELLS))),
+            line(name, Piece("no limit in the plan", "faint")),
+            line(padded(f"{calls} up", LABEL_CELLS)),
             _rates(way),
         ]
     strip = cells - LABEL_CELLS - VERDICT_CELLS - 1
@@ -102,30 +114,31 @@ def _way(label: str, link: LinkState, way: DirectionState, cells: int) -> list[L
     verdict = verdict_on_direction(link, way)
     row = fitted(places_line(places, scale, strip), strip)
     word = Piece(padded(verdict.word.lower(), VERDICT_CELLS, right=True), verdict.tone)
-    each = Piece(f" mark={scale.each}", "faint") if scale.each > 1 else Piece("")
+    each = Piece(f" {TAKEN}={scale.each} calls" if scale.each > 1 else "", "faint")
     bar = fitted(used_line(places, scale, strip), strip)
     return [
         line(name, *row, word),
-        line(padded(calls, LABEL_CELLS), *bar, each),
+        line(padded(f"{calls} up", LABEL_CELLS), *bar, each),
         _rates(way),
     ]
 
 
 def _short_way(label: str, link: LinkState, way: DirectionState, cells: int) -> Line:
     """Returns one direction in one line."""
-    rates = f" {kbps(way.reserved_kbps)} of {kbps(way.budget_kbps).strip()} "
+    rates = f"{kbps(way.reserved_kbps)} of {kbps(way.budget_kbps).strip()}"
     name = Piece(" " + padded(label, LABEL_CELLS), "strong")
-    strip = cells - LABEL_CELLS - 8 - len(rates) - 1
+    strip = cells - LABEL_CELLS - SHORT_CALLS_CELLS - len(rates)
+    calls = padded(_calls(link, way), SHORT_CALLS_CELLS)
     places = places_of(link, way)
     if places is None or strip <= 0:
-        return line(name, padded(_calls(link, way), 8), f"{rates}kbit/s, no limit")
+        return line(name, calls, f"{kbps(way.reserved_kbps)} kbit/s reserved, no limit")
     row = fitted(places_line(places, scale_for(places, strip), strip), strip)
-    return line(name, padded(_calls(link, way), 8), *row, rates)
+    return line(name, calls, *row, Piece(rates, "faint"))
 
 
 def _calls(link: LinkState, way: DirectionState) -> str:
     planned = f"/{link.planned_calls}" if link.planned_calls is not None else ""
-    return f"{way.calls}{planned} up"
+    return f"{way.calls}{planned}"
 
 
 def _rates(way: DirectionState) -> Line:
@@ -143,7 +156,7 @@ def _load(link: LinkState, cells: int) -> list[Line]:
     """Returns what the interface counters say: all traffic against the capacity."""
     ways = (link.to_site.capacity_kbps, link.from_site.capacity_kbps)
     capacity = min((limit for limit in ways if limit is not None), default=None)
-    head = line(Piece("Counters only: ", "warn"), "calls cannot be told from other traffic")
+    head = line(Piece("Counters only: ", "warn"), "packets may not be read")
     if link.link_kbps is None:
         return [head, line(Piece("link load not known: the counters cannot be read", "faint"))]
     figures = line(

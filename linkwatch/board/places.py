@@ -91,7 +91,7 @@ class Scale:
 def scale_for(places: Places, width: int) -> Scale:
     """Returns the widest scale at which the places, and what hangs over, stand in `width` cells."""
     need = places.total + (places.over + 1 if places.over else 0)
-    for cells in (3, 2, 1):
+    for cells in (2, 1):
         if need * cells <= width:
             return Scale(cells, 1)
     return Scale(1, ceil(min(need, 2 * places.total + 2) / max(width - 2, 1)))

@@ -115,8 +115,10 @@ def decimal(value: float | None, width: int, places: int = 1) -> str:
     """Returns a figure in `width` cells, a dash where it is not known."""
     if value is None:
         return NOTHING.rjust(width)
-    text = f"{value:{width}.{places}f}"
-    return text if len(text) <= width else f"{value:.0f}".rjust(width)[:width]
+    for shown in (f"{value:.{places}f}", f"{value:.0f}", f"{value:.0e}"):
+        if len(shown) <= width:
+            return shown.rjust(width)
+    return ELLIPSIS.rjust(width)
 
 
 def clock(time: int | None) -> str:

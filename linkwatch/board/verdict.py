@@ -6,8 +6,6 @@ from linkwatch.board.places import places_of
 from linkwatch.board.text import count
 from linkwatch.watch.snapshot import DirectionState, LinkState
 
-MOST_SHOWN = 999
-
 
 @dataclass(frozen=True, slots=True)
 class Verdict:
@@ -46,17 +44,15 @@ def _of_direction(link: LinkState, way: DirectionState) -> tuple[float, Verdict]
     places = places_of(link, way)
     kept = f"{link.reserve_calls} more kept free" if link.reserve_calls else ""
     if way.room_calls is not None and way.room_calls > 0:
-        room = min(way.room_calls, MOST_SHOWN)
+        room = way.room_calls
         noun = "planned call fits" if room == 1 else "planned calls fit"
         verdict = Verdict(f"ROOM {room}", "good" if room > 1 else "warn", f"{room} {noun}", kept)
         return way.room_calls, verdict
     over = places.over if places else 0
     if over:
-        shown = min(over, MOST_SHOWN)
-        return -over, Verdict(f"OVER {shown}", "alarm", f"{count(shown, 'place')} over the budget")
+        return -over, Verdict(f"OVER {over}", "alarm", f"{count(over, 'place')} over the budget")
     if way.room_calls is None:
-        calls = min(way.calls, MOST_SHOWN)
-        return float("inf"), Verdict(f"UP {calls}", "plain", "no limit in the plan")
+        return float("inf"), Verdict(f"UP {way.calls}", "plain", "no limit in the plan")
     broached = places.taken - (places.total - places.reserve) if places else 0
     if broached > 0:
         kept = f"{broached} of {link.reserve_calls} kept places taken"
@@ -70,8 +66,7 @@ def _beside_load(link: LinkState) -> Verdict:
         return Verdict("", "faint", "not known what fits")
     if fit <= 0:
         return Verdict("FULL", "warn", "no planned call fits", "beside all traffic")
-    shown = min(fit, MOST_SHOWN)
-    noun = "planned call fits" if shown == 1 else "planned calls fit"
+    noun = "planned call fits" if fit == 1 else "planned calls fit"
     return Verdict(
-        f"FITS {shown}", "good" if shown > 1 else "warn", f"{shown} {noun}", "beside all traffic"
+        f"FITS {fit}", "good" if fit > 1 else "warn", f"{fit} {noun}", "beside all traffic"
     )

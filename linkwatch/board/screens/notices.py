@@ -48,12 +48,12 @@ class Cautions(ModalScreen[None]):
 
 
 GLYPHS = (
-    ("■", "a place of the budget that a call has reserved; a dear call takes several"),
+    ("■", "a place of the budget, taken; a dear call takes several"),
     ("□", "a place that is free"),
     ("○ ●", "a place kept in reserve; the same, taken"),
     ("┃ ►", "the end of the budget; what is over it"),
-    ("━ ═", "what the packets seen really use; the same beyond the budget"),
-    ("!", "trouble: the state says which; behind a codec or a marking, that it is not as planned"),
+    ("━ ═", "what the packets seen use; the same beyond the budget"),
+    ("!", "trouble: the state says which; or: not as planned"),
 )
 KEYS = (
     ("tab", "the next pane; shift-tab the one before"),

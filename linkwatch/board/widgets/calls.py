@@ -52,7 +52,7 @@ class Calls(Sheet, can_focus=True):
         Binding("end", "step(1000000)", "last", show=False, id="calls.last",
                 tooltip="the last call"),
         Binding("enter", "open", "call", id="calls.open", tooltip="open the call under the cursor"),
-        Binding("o", "order", "order", id="calls.order",
+        Binding("o", "order", "order", show=False, id="calls.order",
                 tooltip="order by number, or calls in trouble first"),
     ]  # fmt: skip
 

@@ -25,7 +25,13 @@ def tap_lines(snapshot: Snapshot, width: int) -> list[Line]:
         labelled(" voice packets", f"{tap.voice_packets:>12,}"),
         labelled(" streams", f"{tap.streams:>12,}"),
     ]
-    for remark in tap.remarks:
+    guessed = [
+        f"the plan names no site_prefixes for link {link.name}: every stream counts for it, and "
+        "which direction is which is guessed"
+        for link in snapshot.links
+        if not link.directions_known
+    ]
+    for remark in (*tap.remarks, *guessed):
         first, *others = wrapped(remark, width - 4)
         shown += [line(Piece(" · ", "warn"), first)]
         shown += [line(f"   {row}") for row in others]
