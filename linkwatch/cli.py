@@ -10,7 +10,7 @@ from linkwatch import __version__
 from linkwatch.errors import InputError, LinkwatchError, one_line
 
 # The one kind of wrong usage that typer names in public shares this base with all the others.
-WRONG_USAGE = typer.BadParameter.__mro__[2]
+WRONG_USAGE: type[Exception] = typer.BadParameter.__mro__[2]
 
 app = typer.Typer(
     name="linkwatch",

@@ -1,7 +1,7 @@
 """Packets that have been sorted by what they belong to, so that sums of each run are one call."""
 
 from dataclasses import dataclass
-from typing import Any, TypeVar
+from typing import Any, TypeVar, cast
 
 import numpy as np
 import numpy.typing as npt
@@ -39,13 +39,11 @@ class Groups:
 
     def total(self, column: Column) -> Column:
         """Returns the sum of each run."""
-        total: Column = np.add.reduceat(column, self.start)
-        return total
+        return cast("Column", np.add.reduceat(column, self.start))
 
     def each(self, column: Column) -> Column:
         """Returns a column of the runs spread over their packets."""
-        spread: Column = np.repeat(column, self.size)
-        return spread
+        return cast("Column", np.repeat(column, self.size))
 
     def all(self, column: Mask) -> Mask:
         """Whether it holds for every packet of each run."""

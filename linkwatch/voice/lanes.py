@@ -78,7 +78,7 @@ class Lanes:
 
         Columns of one length; `segment` counts how often the source's numbering began again.
         """
-        lane = self._number[source, payload_type]
+        lane = self._lanes_of(source, payload_type)
         if not lane.all():
             lane = self._begin(source, payload_type, timestamp, time)
         order = grouping(lane)
@@ -91,11 +91,15 @@ class Lanes:
         self._lane["packets"][groups.owner] += groups.size
         self._lane["payload_octets"][groups.owner] += groups.total(payload_octets[order])
 
+    def _lanes_of(self, source: Longs, payload_type: npt.NDArray[np.uint8]) -> Longs:
+        """Returns each packet's lane, 0 where it has none."""
+        return self._number[source, payload_type].astype(np.int64)
+
     def _begin(
         self, source: Longs, payload_type: npt.NDArray[np.uint8], timestamp: Longs, time: Longs
-    ) -> npt.NDArray[np.int32]:
+    ) -> Longs:
         """Begins the lanes that are missing; returns each packet's lane, 0 where none is free."""
-        missing = np.flatnonzero(self._number[source, payload_type] == 0)
+        missing = np.flatnonzero(self._lanes_of(source, payload_type) == 0)
         new = source[missing] * PAYLOAD_TYPES + payload_type[missing]
         _, first = np.unique(new, return_index=True)
         for packet in missing[np.sort(first)[: len(self._free)]]:
@@ -109,7 +113,7 @@ class Lanes:
             lane["first_time"] = time[packet]
             lane["first_timestamp"] = timestamp[packet]
             self._number[source[packet], payload_type[packet]] = number
-        lanes = self._number[source, payload_type]
+        lanes = self._lanes_of(source, payload_type)
         self.left_out += int(np.count_nonzero(lanes == 0))
         return lanes
 
@@ -178,9 +182,9 @@ class Lanes:
         which = np.flatnonzero(regular)
         step = np.rint(ticks[which] * (1000 * STEPS_A_MS) / clock[which]).astype(np.int64)
         short = step < self._steps.shape[1]
-        lane = groups.each(groups.owner)[which[short]]
         width = self._steps.shape[1]
-        np.add.at(self._steps.reshape(-1), lane.astype(np.int64) * width + step[short], 1)
+        place = groups.each(groups.owner)[which[short]] * width + step[short]
+        np.add.at(self._steps.reshape(-1), place, np.uint32(1))
 
     def main(self, sources: int) -> Longs:
         """Returns the lane with most packets of each source, speech before all else; 0 is none."""
@@ -198,7 +202,8 @@ class Lanes:
 
     def packet_ms(self, lanes: Longs) -> Reals:
         """Returns each lane's most usual packetisation in ms, 0 while it is not known."""
-        return self._steps[lanes].argmax(axis=1) / STEPS_A_MS
+        most_usual: Longs = self._steps[lanes].argmax(axis=1)
+        return most_usual / STEPS_A_MS
 
     def forget(self, gone: Mask) -> None:
         """Frees the lanes of the sources for which this is true."""

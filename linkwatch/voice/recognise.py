@@ -1,8 +1,10 @@
 """The codec of a stream, and the evidence for it."""
 
 from collections.abc import Mapping
+from functools import lru_cache
 from typing import NamedTuple
 
+from linkwatch.errors import InputError
 from linkwatch.plan.codecs import STATIC_PAYLOAD_TYPES, codecs, find_codec
 
 UNKNOWN = "unknown"
@@ -58,6 +60,7 @@ class Recogniser:
         """Returns what a payload type (0 to 127) means."""
         return self._meanings.get(payload_type, NO_MEANING)
 
+    @lru_cache(maxsize=4096)  # noqa: B019 - asked for every stream at every tick
     def codec(
         self, payload_type: int, packet_ms: float | None, payload_octets: float, clock_hz: int
     ) -> tuple[str, str, str]:
@@ -88,7 +91,10 @@ def _planned(name: str) -> Meaning:
     """Returns the meaning of a name that the plan gives to a payload type."""
     if name.upper() in NOT_SPEECH:
         return Meaning(name, 8000, "audio", "plan", speech=False)
-    codec = find_codec(name)
+    try:
+        codec = find_codec(name)
+    except InputError:  # a codec whose cost nobody knows is still a codec with a name
+        return Meaning(name, 0, "audio", "plan", speech=True)
     return Meaning(codec.family, codec.clock_hz, "audio", "plan", speech=True)
 
 

@@ -233,7 +233,7 @@ class StreamTable:
         self._memory[rows] = 0
         self._link_octets[rows] = self._new_link_octets[rows] = 0
         source["state"][rows] = ON_PROBATION
-        source["first"][rows] = packets.time[first]
+        source["first"][rows] = source["last"][rows] = packets.time[first]
         source["dscp"][rows] = packets.dscp[first]
         source["awaited"][rows] = -1
         source["highest"][rows] = sequence - 1
@@ -277,7 +277,7 @@ class StreamTable:
         source["different"][row[regular]] += groups.size[regular]
         segment = groups.each(source["segment"][row])
         for group in np.flatnonzero(~regular):
-            self._follow(groups, group, packets.sequence, step, segment)
+            self._follow(groups, int(group), packets.sequence, step, segment)
         return step, segment
 
     def _follow(

@@ -100,7 +100,6 @@ class DirectionState:
         reserved_kbps: Planned cost of these calls' codecs and packetisations.
         used_kbps: The voice packets really seen, each put through the link's framing.
         seen_kbps: The same packets as the frames they were on the tap.
-        link_kbps: All traffic by the interface counters, or None where there are none.
         budget_kbps: What voice may use, or None where the plan sets no limit.
         capacity_kbps: What the link carries, or None where the plan does not say.
         reserve_kbps: The part of the budget that stays free, for emergency calls above all.
@@ -111,7 +110,6 @@ class DirectionState:
     reserved_kbps: float
     used_kbps: float
     seen_kbps: float
-    link_kbps: float | None
     budget_kbps: float | None
     capacity_kbps: float | None
     reserve_kbps: float
