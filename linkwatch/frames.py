@@ -1,15 +1,19 @@
-"""What every tap delivers: a batch of frames as columns, never an object per frame."""
+"""What every tap delivers: a batch of frames as columns, never an object per frame.
+
+Headers are numpy layouts; `gather` reads a whole column of them at once.
+"""
 
 from collections.abc import Iterator
 from dataclasses import dataclass, replace
 from enum import IntEnum
-from typing import Protocol, TypeAlias
+from typing import Any, Protocol, TypeAlias
 
 import numpy as np
 import numpy.typing as npt
 
 Octets: TypeAlias = npt.NDArray[np.uint8]
 Longs: TypeAlias = npt.NDArray[np.int64]
+Rows: TypeAlias = npt.NDArray[Any]
 
 
 class LinkType(IntEnum):
@@ -73,6 +77,19 @@ def silence(link_type: LinkType, until: int) -> FrameBatch:
     """Returns a batch without frames: it says only that time has come to `until`."""
     none = np.empty(0, np.int64)
     return FrameBatch(np.empty(0, np.uint8), none, none, none, none, link_type, until)
+
+
+def gather(octets: Octets, at: Longs, layout: np.dtype[Any]) -> Rows:
+    """Returns the layout's octets at each place, as rows of that layout.
+
+    Every place must have the whole layout in the buffer. Overlapping views of the buffer make
+    this one copy of a few octets per row, whatever their alignment.
+    """
+    size = layout.itemsize
+    if len(octets) < size or not len(at):
+        return np.empty(0, layout)
+    places = np.ndarray((len(octets) - size + 1,), f"V{size}", octets, strides=(1,))
+    return places[at].view(layout)
 
 
 @dataclass(frozen=True, slots=True)

@@ -5,15 +5,14 @@ only where the frame was captured that far, so nothing is ever read outside a fr
 """
 
 from dataclasses import dataclass
-from typing import Any, TypeAlias
+from typing import TypeAlias
 
 import numpy as np
 import numpy.typing as npt
 
-from linkwatch.frames import FrameBatch, LinkType, Longs, Octets
+from linkwatch.frames import FrameBatch, LinkType, Longs, Octets, gather
 
 Words: TypeAlias = npt.NDArray[np.uint64]
-Rows: TypeAlias = npt.NDArray[Any]
 Mask: TypeAlias = npt.NDArray[np.bool_]
 
 TYPE = np.dtype(">u2")
@@ -89,19 +88,6 @@ class Datagrams:
 
     def __len__(self) -> int:
         return len(self.frame)
-
-
-def gather(octets: Octets, at: Longs, layout: np.dtype[Any]) -> Rows:
-    """Returns the layout's octets at each place, as rows of that layout.
-
-    Every place must have the whole layout in the buffer. Overlapping views of the buffer make
-    this one copy of a few octets per row, whatever their alignment.
-    """
-    size = layout.itemsize
-    if len(octets) < size or not len(at):
-        return np.empty(0, layout)
-    places = np.ndarray((len(octets) - size + 1,), f"V{size}", octets, strides=(1,))
-    return places[at].view(layout)
 
 
 def datagrams(batch: FrameBatch) -> Datagrams:

@@ -9,8 +9,8 @@ from dataclasses import dataclass
 import numpy as np
 import numpy.typing as npt
 
-from linkwatch.frames import FrameBatch, Longs, Octets
-from linkwatch.voice.headers import Datagrams, Mask, Words, chosen, gather
+from linkwatch.frames import FrameBatch, Longs, Octets, gather
+from linkwatch.voice.headers import Datagrams, Mask, Words, chosen
 
 # RFC 3550 5.1
 RTP = np.dtype(
