@@ -55,7 +55,7 @@ class Board(App[int]):
 
     CSS_PATH = "board.tcss"
     HORIZONTAL_BREAKPOINTS = [(0, "-narrow"), (120, "-wide")]  # noqa: RUF012 - as the base has it
-    VERTICAL_BREAKPOINTS = [(0, "-short"), (30, "-tall"), (50, "-towering")]  # noqa: RUF012 - as the base has it
+    VERTICAL_BREAKPOINTS = [(0, "-short"), (30, "-tall")]  # noqa: RUF012 - as the base has it
     BINDINGS: ClassVar[list[BindingType]] = [
         Binding("p", "pause", "hold", id="board.pause",
                 tooltip="hold the picture; counting goes on"),

@@ -12,6 +12,7 @@ from linkwatch.watch.snapshot import CallState
 
 ARROW = " → "
 ENDS_LEAST = 2 * 15 + len(ARROW)  # two IPv4 addresses without their ports
+ENDS_MOST = 2 * 30 + len(ARROW)
 SIGN = "!"
 
 
@@ -94,7 +95,7 @@ COLUMNS = (
     Column("ms", 4, lambda row: decimal(row.call.packet_ms, 4, 0), going=4),
     Column("kbit/s", 6, lambda row: decimal(row.call.used_kbps, 6)),
     Column("reserved", 8, lambda row: decimal(row.call.reserved_kbps, 8), going=2),
-    Column("loss%", 5, lambda row: decimal(row.call.loss_percent, 5), going=7),
+    Column("loss", 4, lambda row: decimal(row.call.loss_percent, 4), going=7),
     Column("jitter", 6, lambda row: decimal(row.call.jitter_ms, 6), going=6),
     Column("MOS", 4, lambda row: decimal(row.call.mos, 4, 2), going=1),
     Column(
@@ -122,7 +123,7 @@ def columns_for(width: int) -> tuple[tuple[Column, ...], int]:
     while True:
         left = width - sum(column.width + 1 for column in columns) + 1
         if left >= ENDS_LEAST or not order:
-            return tuple(columns), max(left, len(ARROW) + 2)
+            return tuple(columns), max(min(left, ENDS_MOST), len(ARROW) + 2)
         columns.remove(order.pop(0))
 
 

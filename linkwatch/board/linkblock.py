@@ -11,9 +11,9 @@ from linkwatch.board.verdict import Verdict, verdict_on, verdict_on_direction
 from linkwatch.watch.snapshot import DirectionState, LinkState, Snapshot
 
 NAME_CELLS = 24
-LABEL_CELLS = 10
-VERDICT_CELLS = 9
-SHORT_CALLS_CELLS = 6
+LABEL_CELLS = 11
+VERDICT_CELLS = 8
+SHORT_LABEL_CELLS, SHORT_CALLS_CELLS = 10, 6
 WORD_CELLS = 30  # half-size words of up to two digits, with air on both sides
 WIDE_WORD_CELLS = 60
 LOAD, LOAD_FREE = "▬", "·"
@@ -126,8 +126,8 @@ def _way(label: str, link: LinkState, way: DirectionState, cells: int) -> list[L
 def _short_way(label: str, link: LinkState, way: DirectionState, cells: int) -> Line:
     """Returns one direction in one line."""
     rates = f"{kbps(way.reserved_kbps)} of {kbps(way.budget_kbps).strip()}"
-    name = Piece(" " + padded(label, LABEL_CELLS), "strong")
-    strip = cells - LABEL_CELLS - SHORT_CALLS_CELLS - len(rates)
+    name = Piece(" " + padded(label, SHORT_LABEL_CELLS), "strong")
+    strip = cells - SHORT_LABEL_CELLS - SHORT_CALLS_CELLS - len(rates)
     calls = padded(_calls(link, way), SHORT_CALLS_CELLS)
     places = places_of(link, way)
     if places is None or strip <= 0:

@@ -10,8 +10,10 @@ from math import ceil, isfinite
 from linkwatch.board.lines import Line, Piece, line
 from linkwatch.watch.snapshot import DirectionState, LinkState
 
-TAKEN, FREE, KEPT, BROACHED, OVER, EDGE = "■", "□", "○", "●", "►", "┃"
+TAKEN, FREE, KEPT, BROACHED, OVER, MORE, EDGE = "■", "□", "○", "●", "►", "+", "┃"
 USED, USED_HALF, USED_OVER = "━", "╸", "═"
+OVER_SEEN = 3
+ROW = ((TAKEN, "accent"), (FREE, "good"), (BROACHED, "warn"), (KEPT, "second"))
 MOST_PLACES = 1_000_000
 
 
@@ -89,33 +91,45 @@ class Scale:
 
 
 def scale_for(places: Places, width: int) -> Scale:
-    """Returns the widest scale at which the places, and what hangs over, stand in `width` cells."""
-    need = places.total + (places.over + 1 if places.over else 0)
+    """Returns the widest scale at which the places stand in `width` cells.
+
+    Of what hangs over only the beginning needs space: how much it is, the verdict says.
+    """
+    need = places.total + (1 + min(places.over, OVER_SEEN) if places.over else 0)
     for cells in (2, 1):
         if need * cells <= width:
             return Scale(cells, 1)
-    return Scale(1, ceil(min(need, 2 * places.total + 2) / max(width - 2, 1)))
+    return Scale(1, ceil(places.total / max(width - OVER_SEEN - 4, 1)))
 
 
 def places_line(places: Places, scale: Scale, width: int) -> Line:
     """Returns the row of places."""
-    room = max(0, places.total - places.reserve - places.taken)
-    broached = min(places.reserve, max(0, places.taken - (places.total - places.reserve)))
-    kept, free = ceil((places.reserve - broached) / scale.each), ceil(room / scale.each)
+    free = max(0, places.total - places.reserve - places.taken)
+    broached = max(0, min(places.taken, places.total) - (places.total - places.reserve))
     cells = ceil(places.total / scale.each)
-    broached = min(ceil(broached / scale.each), cells - kept - free)
-    taken = max(0, cells - kept - free - broached)
-    gap = " " * (scale.cells - 1)
-    pieces = [
-        Piece((TAKEN + gap) * taken, "accent"),
-        Piece((FREE + gap) * free, "good"),
-        Piece((BROACHED + gap) * broached, "warn"),
-        Piece((KEPT + gap) * kept, "second"),
-    ]
+    counts = {
+        FREE: free,
+        KEPT: places.reserve - broached,
+        BROACHED: broached,
+        TAKEN: min(places.taken, places.total - places.reserve),
+    }
+    # Where places share a cell, a free one is never hidden by others, nor a kept one by taken ones.
+    left = cells
+    for glyph, count in counts.items():
+        counts[glyph] = min(left, ceil(count / scale.each))
+        left -= counts[glyph]
+    runs = [Piece((glyph + " " * (scale.cells - 1)) * counts[glyph], tone) for glyph, tone in ROW]
     if places.over:
-        beyond = max(1, min(ceil(places.over / scale.each), (width - 1) // scale.cells - cells))
-        pieces += [Piece(EDGE, "strong"), Piece((OVER + gap) * beyond, "alarm")]
-    return line(*(piece for piece in pieces if piece.text))
+        runs += _overhang(places.over, scale, width - cells * scale.cells - 1)
+    return line(*(run for run in runs if run.text))
+
+
+def _overhang(over: int, scale: Scale, width: int) -> list[Piece]:
+    """Returns the edge of the budget and what hangs over it, as far as there is space."""
+    most = max(1, width // scale.cells)
+    shown = ceil(over / scale.each)
+    glyphs = OVER * shown if shown <= most else OVER * (most - 1) + MORE
+    return [Piece(EDGE, "strong"), Piece((" " * (scale.cells - 1)).join(glyphs), "alarm")]
 
 
 def used_line(places: Places, scale: Scale, width: int) -> Line:

@@ -58,7 +58,7 @@ def _harmless(text: str) -> list[str]:
     for letter in text:
         if letter != " " and unicodedata.category(letter) == "Zs":
             letter = " "
-        if unicodedata.combining(letter) or unicodedata.category(letter) in ("Mn", "Me"):
+        if unicodedata.combining(letter) or unicodedata.category(letter) in ("Mn", "Mc", "Me"):
             marks += 1
             if marks > MARKS_PER_LETTER or ord(letter) in JOINERS:
                 letter = REPLACEMENT

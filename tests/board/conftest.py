@@ -131,7 +131,7 @@ class FeedByHand:
         self.stops += 1
 
 
-@pytest.fixture
+@pytest.fixture(scope="session")
 def make():
     """Gives the builders by name."""
     return SimpleNamespace(

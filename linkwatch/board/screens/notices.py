@@ -68,8 +68,9 @@ KEYS = (
     ("q", "leave"),
 )
 COLUMNS = (
-    "Columns go when space is short, in this order: MOS, reserved, age, ms (packetisation), mark "
-    "(DSCP marking), jitter, loss, call number. A call's page has them all."
+    "Loss is in percent, jitter in ms, ms is the packetisation, mark the DSCP marking. Columns go "
+    "when space is short, in this order: MOS, reserved, age, ms, mark, jitter, loss, call number. "
+    "A call's page has them all."
 )
 
 
