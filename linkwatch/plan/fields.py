@@ -2,7 +2,6 @@
 
 from collections.abc import Callable, Mapping
 from ipaddress import IPv4Address, IPv4Network, IPv6Address, IPv6Network, ip_network
-from types import MappingProxyType
 from typing import Annotated, TypeGuard, TypeVar
 
 from pydantic import BaseModel, BeforeValidator, Field
@@ -130,7 +129,7 @@ def read_payload_types(given: object) -> Mapping[int, str]:
     """Returns what payload types mean, by number."""
     if not isinstance(given, Mapping):
         raise unfit(given, "payload types with what they mean, such as {97: ILBC}")
-    return MappingProxyType({_payload_type(n): _meaning(n, name) for n, name in given.items()})
+    return {_payload_type(number): _meaning(number, name) for number, name in given.items()}
 
 
 def _payload_type(number: object) -> int:

@@ -8,7 +8,7 @@ from functools import partial
 from types import MappingProxyType
 from typing import Annotated, ClassVar, Literal, Self
 
-from pydantic import BaseModel, ConfigDict, Field, model_validator
+from pydantic import AfterValidator, BaseModel, ConfigDict, Field, model_validator
 from pydantic.fields import FieldInfo
 
 from linkwatch.errors import InputError
@@ -266,7 +266,9 @@ class Plan(Part):
     links: Annotated[tuple[LinkPlan, ...], reads(partial(listed, 1, MOST_LINKS, LINKS_WANTED))] = (
         Field(description=LINKS_WANTED)
     )
-    payload_types: Annotated[Mapping[int, str], reads(read_payload_types)] = Field(
+    payload_types: Annotated[
+        Mapping[int, str], AfterValidator(MappingProxyType), reads(read_payload_types)
+    ] = Field(
         default_factory=partial(MappingProxyType, {}),
         description="payload types with what they mean, such as {97: ILBC}",
     )
