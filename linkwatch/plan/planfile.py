@@ -127,7 +127,7 @@ class _Fault:
         if self._told is not None:
             return self.path, self._told.got, self._told.wanted, self._told.remedy
         part, wanted = _place(self.path)
-        if self._details["type"] in ("extra_forbidden", "invalid_key"):
+        if self._details["type"] == "extra_forbidden":
             keys = part.keys()
             remedy = nearest(str(self.path[-1]), keys)
             return self.path, "an unknown key", one_of(keys), remedy
