@@ -1,0 +1,162 @@
+"""Capture files: pcap and pcapng, plain or gzipped, from a file, a pipe or standard input.
+
+A capture is read in pieces, so memory is flat in its length, and a file that grows or shrinks
+meanwhile does no harm.
+"""
+
+import gzip
+import stat
+import sys
+import zlib
+from collections.abc import Iterator
+from io import BufferedReader
+from pathlib import Path
+from typing import cast
+
+import numpy as np
+
+from linkwatch.errors import CaptureError
+from linkwatch.frames import CounterReading, FrameBatch, LinkType, TapStatistics
+from linkwatch.tap.records import LONGEST_BLOCK, Frames, Pcapng, format_of
+
+PIECE = 4 << 20  # octets read at once: they stay in the processor's cache until they are used
+HEAD = 24  # octets that tell the format
+GZIP_MAGIC = b"\x1f\x8b"
+STANDARD_INPUT = "-"
+
+
+class CaptureFile:
+    """A capture file as a tap.
+
+    Args:
+        path: The file, a named pipe, or "-" for standard input.
+
+    Raises:
+        CaptureError: It cannot be read, or is no capture.
+    """
+
+    def __init__(self, path: Path) -> None:
+        self._name = "standard input" if str(path) == STANDARD_INPUT else str(path)
+        self._file, self._size = _open(path, self._name)
+        self._unpacked: gzip.GzipFile | BufferedReader = self._file
+        self._frames = self._octets = 0
+        self._until = 0
+        self._remarks: list[str] = []
+        self._closed = False
+        if self._file.peek(2)[:2] == GZIP_MAGIC:
+            self._unpacked = gzip.GzipFile(fileobj=self._file)
+        head = self._more(HEAD)
+        try:
+            self._format, self._records_at = format_of(head, self._name)
+        except CaptureError:
+            self.close()
+            raise
+        self._held = head[self._records_at :]
+
+    @property
+    def name(self) -> str:
+        """The file's name."""
+        return Path(self._name).name
+
+    @property
+    def progress(self) -> float:
+        """How much of the file is read, 0 to 1; 0 where its length is not known."""
+        if not self._size:
+            return 0.0
+        return min(1.0, self._file.tell() / self._size)
+
+    def batches(self) -> Iterator[FrameBatch]:
+        """Yields the frames in the order of the file, a few MB at a time."""
+        piece, begins = self._held, self._records_at
+        while not self._closed:
+            more = self._more(PIECE)
+            piece += more
+            place = 0
+            while True:
+                found = self._format.find(piece, place)
+                yield from self._batches(piece, found.frames)
+                if found.fault or found.used == place:
+                    break
+                place = found.used
+            place = found.used
+            if found.fault or not more or len(piece) - place > LONGEST_BLOCK + PIECE:
+                self._conclude(begins + place, found.fault, len(piece) - place)
+                return
+            piece, begins = piece[place:], begins + place
+
+    def counters(self) -> CounterReading | None:
+        """Returns None: a capture knows nothing of interface counters."""
+        return None
+
+    def statistics(self) -> TapStatistics:
+        """Returns what was read so far."""
+        return TapStatistics(self._frames, self._octets, remarks=tuple(self._remarks))
+
+    def close(self) -> None:
+        """Closes the file."""
+        self._closed = True
+        self._file.close()
+
+    def _more(self, octets: int) -> bytes:
+        """Reads on; where the file cannot be read on, that is the end, with a remark."""
+        got = b""
+        try:
+            while len(got) < octets and (more := self._unpacked.read(octets - len(got))):
+                got += more
+        except (OSError, EOFError, zlib.error, ValueError) as error:
+            if not self._closed:
+                self._remarks.append(f"{self._name} cannot be read to its end: {error}")
+        return got
+
+    def _batches(self, piece: bytes, frames: Frames) -> Iterator[FrameBatch]:
+        """Yields what was found as batches of one link type each."""
+        if not len(frames.at):
+            return
+        octets = np.frombuffer(piece, np.uint8)
+        changes = np.flatnonzero(np.diff(frames.link_type)) + 1
+        for start, stop in zip((0, *changes), (*changes, len(frames.at)), strict=True):
+            part = slice(start, stop)
+            self._frames += int(stop - start)
+            self._octets += int(frames.original[part].sum())
+            self._until = max(self._until, int(frames.times[part].max()) + 1)
+            yield FrameBatch(
+                octets,
+                frames.at[part],
+                frames.captured[part],
+                frames.original[part],
+                frames.times[part],
+                LinkType(int(frames.link_type[start])),
+                self._until,
+            )
+
+    def _conclude(self, place: int, fault: str, rest: int) -> None:
+        """Says what of the file could not be used."""
+        if fault and not self._frames:
+            raise CaptureError(self._name, got=f"{fault} at octet {place}", wanted="a capture")
+        if fault:
+            self._remarks.append(
+                f"damaged at octet {place} ({fault}); the frames before it are used"
+            )
+        elif rest:
+            self._remarks.append(
+                f"cut off in the middle of a frame at octet {place}; the frames before it are used"
+            )
+        if isinstance(self._format, Pcapng) and self._format.left_out:
+            self._remarks.append(
+                f"{self._format.left_out} frames of link types that cannot be read are left out"
+            )
+
+
+def _open(path: Path, name: str) -> tuple[BufferedReader, int]:
+    """Returns the file and its length, 0 where it has none."""
+    if str(path) == STANDARD_INPUT:
+        return cast(BufferedReader, sys.stdin.buffer), 0
+    try:
+        kind = path.stat()
+        if stat.S_ISDIR(kind.st_mode):
+            raise CaptureError(name, got="a directory", wanted="a capture file")
+        file = path.open("rb")
+    except (OSError, ValueError) as error:
+        reason = getattr(error, "strerror", None) or "a name that no file can have"
+        raise CaptureError(name, got=reason.lower()) from None
+    return file, kind.st_size if stat.S_ISREG(kind.st_mode) else 0

@@ -1,0 +1,301 @@
+"""The two capture formats: where the frames lie in a piece of a file, and what is told of them.
+
+Only the places of the records are found one after another; their heads are read as columns.
+pcap and pcapng are those of the IETF's drafts "PCAP Capture File Format" and "PCAP Next Generation
+Capture File Format".
+"""
+
+import struct
+from dataclasses import dataclass
+from typing import NamedTuple, Protocol
+
+import numpy as np
+
+from linkwatch.errors import CaptureError
+from linkwatch.frames import LinkType, Longs, Rows, gather
+
+LONGEST_FRAME = 256 << 10  # octets; no link carries frames so long, so a longer one is corrupt
+SECOND_NS = 1_000_000_000
+ALSO_RAW = {12, 14}  # values that some systems write for raw IP
+
+
+class Frames(NamedTuple):
+    """Frames found in a piece of a capture; columns of one length.
+
+    Attributes:
+        at: Where each one's octets begin in the piece.
+        captured, original: Octets there, and on the wire.
+        times: Nanoseconds since 1970-01-01 UTC.
+        link_type: The link type's number of each.
+    """
+
+    at: Longs
+    captured: Longs
+    original: Longs
+    times: Longs
+    link_type: Longs
+
+
+class Found(NamedTuple):
+    """What was found in a piece of a capture.
+
+    Attributes:
+        frames: The frames of the whole records from the given place on.
+        used: Where these records end.
+        fault: What is wrong with what stands there, or "" where there is just no more.
+    """
+
+    frames: Frames
+    used: int
+    fault: str = ""
+
+
+class Format(Protocol):
+    """A capture format, with what it has learned of the file so far."""
+
+    def find(self, piece: bytes, place: int) -> Found:
+        """Returns the frames from a place in a piece on.
+
+        There may be more behind them: to be asked again from where they end, until it uses none.
+        """
+        ...
+
+
+def format_of(head: bytes, name: str) -> tuple[Format, int]:
+    """Returns the format of a capture that begins with these octets, and where its records begin.
+
+    Raises:
+        CaptureError: It is no capture.
+    """
+    if len(head) < PCAP_HEAD:
+        raise CaptureError(name, got=f"{len(head)} octets", wanted="a pcap or pcapng capture")
+    for order in "<>":
+        magic = struct.unpack_from(order + "I", head)[0]
+        if magic in PCAP_UNITS:
+            link_type = struct.unpack_from(order + "I", head, 20)[0] & 0xFFFF
+            return Pcap(order, PCAP_UNITS[magic], known_link_type(link_type, name)), PCAP_HEAD
+    if head[:4] == SECTION_MAGIC:
+        return Pcapng(name), 0
+    raise CaptureError(
+        name, got=f"a file that begins with {head[:4].hex(' ')}", wanted="a pcap or pcapng capture"
+    )
+
+
+def known_link_type(number: int, name: str) -> int:
+    """Returns a link type's number as `LinkType` has it.
+
+    Raises:
+        CaptureError: We cannot read such frames.
+    """
+    if number in ALSO_RAW:
+        return int(LinkType.RAW)
+    if number not in set(LinkType):
+        wanted = ", ".join(f"{kind.name} ({int(kind)})" for kind in LinkType)
+        raise CaptureError(name, got=f"link type {number}", wanted=f"one of {wanted}")
+    return number
+
+
+# -- pcap --------------------------------------------------------------------------------------
+
+PCAP_HEAD, PCAP_RECORD = 24, 16
+PCAP_UNITS = {0xA1B2C3D4: 1000, 0xA1B23C4D: 1}  # nanoseconds of the second time field's unit
+
+
+@dataclass(slots=True)
+class Pcap:
+    """The older format: one link type, a fixed head before each frame.
+
+    Attributes:
+        order: "<" or ">".
+        unit_ns: Nanoseconds of a unit of the second time field.
+        link_type: Of all frames.
+    """
+
+    order: str
+    unit_ns: int
+    link_type: int
+
+    def find(self, piece: bytes, place: int) -> Found:
+        """See `Format`."""
+        captured_at = struct.Struct(f"{self.order}8xI").unpack_from
+        places: list[int] = []
+        found = places.append
+        last, end, fault = len(piece) - PCAP_RECORD, len(piece), ""
+        while place <= last:
+            following = place + PCAP_RECORD + captured_at(piece, place)[0]
+            if following > end:
+                if following - place > LONGEST_FRAME:
+                    fault = f"a frame of {following - place - PCAP_RECORD} octets"
+                break
+            found(place)
+            place = following
+        return Found(self._frames(piece, np.array(places, np.int64)), place, fault)
+
+    def _frames(self, piece: bytes, places: Longs) -> Frames:
+        field_type = np.dtype(f"{self.order}u4")
+        layout = np.dtype([(name, field_type) for name in ("sec", "unit", "captured", "original")])
+        head = gather(np.frombuffer(piece, np.uint8), places, layout)
+        times = head["sec"].astype(np.int64) * SECOND_NS
+        times += head["unit"].astype(np.int64) * self.unit_ns
+        return Frames(
+            places + PCAP_RECORD,
+            head["captured"].astype(np.int64),
+            head["original"].astype(np.int64),
+            times,
+            np.full(len(places), self.link_type),
+        )
+
+
+# -- pcapng ------------------------------------------------------------------------------------
+
+SECTION_MAGIC = b"\x0a\x0d\x0d\x0a"
+SECTION, INTERFACE, OLD_PACKET, SIMPLE_PACKET, PACKET = 0x0A0D0D0A, 1, 2, 3, 6
+LITTLE, BIG = b"\x4d\x3c\x2b\x1a", b"\x1a\x2b\x3c\x4d"
+BLOCK_FRAME, BLOCK_LEAST = 8, 12  # octets before a block's body; and of an empty block
+LONGEST_BLOCK = 16 << 20  # octets; no known block comes near it
+PACKET_HEAD, SIMPLE_HEAD = 20, 4
+RESOLUTION, OFFSET = 9, 14  # options of an interface
+MICROSECONDS = 6  # the resolution where none is told
+MOST_INTERFACES = 1024
+
+
+class Interface(NamedTuple):
+    """What an interface description says.
+
+    Attributes:
+        link_type: Its number, -1 for frames we cannot read.
+        snaplen: Octets captured at most, 0 for no limit.
+        resolution: Of its times, as the option has it: a power of ten, or of two with bit 7.
+        offset_s: Seconds to add.
+    """
+
+    link_type: int
+    snaplen: int
+    resolution: int = MICROSECONDS
+    offset_s: int = 0
+
+    def nanoseconds(self, ticks: Rows) -> Longs:
+        """Returns times in nanoseconds, from times in this interface's units."""
+        power = self.resolution & 0x7F
+        if self.resolution & 0x80:
+            whole = (ticks >> np.uint64(min(power, 63))).astype(np.int64)
+            part = ticks & np.uint64((1 << min(power, 63)) - 1)
+            times = whole * SECOND_NS + (part / 2.0**power * SECOND_NS).astype(np.int64)
+        elif power <= 9:
+            times = ticks.astype(np.int64) * 10 ** (9 - power)
+        else:
+            times = (ticks // np.uint64(10 ** min(power - 9, 19))).astype(np.int64)
+        return times + self.offset_s * SECOND_NS
+
+
+class Pcapng:
+    """The newer format: blocks of many kinds, interfaces with link types of their own.
+
+    Args:
+        name: What errors call the file.
+    """
+
+    def __init__(self, name: str) -> None:
+        self._name = name
+        self._order = "<"
+        self._interfaces: list[Interface] = []
+        self._last_time = 0
+        self.left_out = 0
+
+    def find(self, piece: bytes, place: int) -> Found:
+        """See `Format`; a section or an interface changes what follows means, and ends a find."""
+        places: list[int] = []
+        fault = ""
+        while place + BLOCK_LEAST <= len(piece):
+            order = self._order_at(piece, place)
+            kind, length = struct.unpack_from(order + "II", piece, place)
+            if not order or length < BLOCK_LEAST or length % 4 or length > LONGEST_BLOCK:
+                fault = f"a block of {length} octets"
+                break
+            if place + length > len(piece):
+                break
+            if kind in (SECTION, INTERFACE):
+                if places:
+                    break
+                fault = self._learn(kind, order, piece[place : place + length])
+                if fault:
+                    break
+            elif kind in (PACKET, OLD_PACKET, SIMPLE_PACKET):
+                places.append(place)
+            place += length
+        return Found(self._frames(piece, np.array(places, np.int64)), place, fault)
+
+    def _order_at(self, piece: bytes, place: int) -> str:
+        """Returns the byte order of the block there; a section head tells a new one."""
+        if piece[place : place + 4] != SECTION_MAGIC:
+            return self._order
+        return {LITTLE: "<", BIG: ">"}.get(piece[place + 8 : place + 12], "")
+
+    def _learn(self, kind: int, order: str, block: bytes) -> str:
+        """Takes in a section or an interface; returns what is wrong with it."""
+        if kind == SECTION:
+            self._order, self._interfaces = order, []
+            return ""
+        if len(block) < BLOCK_LEAST + 8 or len(self._interfaces) >= MOST_INTERFACES:
+            return "an interface that cannot be"
+        number, _, snaplen = struct.unpack_from(order + "HHI", block, BLOCK_FRAME)
+        try:
+            link_type = known_link_type(number, self._name)
+        except CaptureError:
+            link_type = -1
+        options = _options(order, block[BLOCK_FRAME + 8 : -4])
+        resolution = options.get(RESOLUTION, bytes([MICROSECONDS]))[:1]
+        offset = options.get(OFFSET, bytes(8))
+        offset_s = struct.unpack(order + "q", offset)[0] if len(offset) == 8 else 0
+        unit = resolution[0] if resolution else MICROSECONDS
+        far = abs(offset_s) > 1 << 33  # beyond any year that nanoseconds can tell
+        self._interfaces.append(Interface(link_type, snaplen, unit, 0 if far else offset_s))
+        return ""
+
+    def _frames(self, piece: bytes, places: Longs) -> Frames:
+        four = np.dtype(f"{self._order}u4")
+        names = ("kind", "length", "interface", "high", "low", "captured", "original")
+        # A simple packet's block may be shorter than the head of the others.
+        octets = np.frombuffer(piece + bytes(PACKET_HEAD), np.uint8)
+        head = gather(octets, places, np.dtype([(n, four) for n in names]))
+        simple = head["kind"] == SIMPLE_PACKET
+        interface = head["interface"].astype(np.int64)
+        # The older packet block has 16 bits of interface, then 16 of drops.
+        old = head["kind"] == OLD_PACKET
+        interface[old] = interface[old] >> 16 if self._order == ">" else interface[old] & 0xFFFF
+        interface[simple] = 0
+        ticks = head["high"].astype(np.uint64) << np.uint64(32) | head["low"]
+        captured = head["captured"].astype(np.int64)
+        original = head["original"].astype(np.int64)
+        at = places + BLOCK_FRAME + PACKET_HEAD
+        room = head["length"].astype(np.int64) - BLOCK_LEAST - PACKET_HEAD
+        if simple.any():
+            at[simple] = places[simple] + BLOCK_FRAME + SIMPLE_HEAD
+            original[simple] = head["interface"][simple]
+            room[simple] += PACKET_HEAD - SIMPLE_HEAD
+            limit = self._interfaces[0].snaplen if self._interfaces else 0
+            captured[simple] = np.minimum(original[simple], limit or LONGEST_FRAME)
+            captured[simple] = np.minimum(captured[simple], room[simple])
+        times, link_type = np.zeros(len(places), np.int64), np.full(len(places), -1)
+        for number, known in enumerate(self._interfaces):
+            of = interface == number
+            times[of] = known.nanoseconds(ticks[of])
+            link_type[of] = known.link_type
+        times[simple] = self._last_time  # the simple block tells no time
+        right = (captured <= room) & (captured <= LONGEST_FRAME) & (link_type >= 0)
+        self.left_out += int(np.count_nonzero(~right))
+        if right.any():
+            self._last_time = int(times[right][-1])
+        return Frames(at[right], captured[right], original[right], times[right], link_type[right])
+
+
+def _options(order: str, octets: bytes) -> dict[int, bytes]:
+    """Returns the options of a block by their codes."""
+    options, place = {}, 0
+    while place + 4 <= len(octets):
+        code, length = struct.unpack_from(order + "HH", octets, place)
+        if code == 0:
+            break
+        options[code] = octets[place + 4 : place + 4 + length]
+        place += 4 + (length + 3) // 4 * 4
+    return options
