@@ -185,6 +185,54 @@ def count(
     raise typer.Exit(watching.count(source, found, as_json=as_json, judge=judge))
 
 
+@app.command()
+def cost(
+    codec: Annotated[str, typer.Option("--codec", metavar="NAME", help="Such as G729.")],
+    packet_ms: Annotated[
+        float | None,
+        typer.Option("--packet-ms", metavar="MS", help="Speech in a packet; default the codec's."),
+    ] = None,
+    framing: Annotated[
+        str,
+        typer.Option(
+            "--framing", metavar="LAYERS", help="From the IP packet outwards, such as crtp,ppp."
+        ),
+    ] = "ethernet",
+    ipv6: Annotated[bool, typer.Option("--ipv6", help="Over IPv6.")] = False,
+    srtp_tag: Annotated[
+        int, typer.Option("--srtp-tag", metavar="OCTETS", help="What SRTP adds, such as 10.")
+    ] = 0,
+    as_json: AsJson = False,
+) -> None:
+    """Say what one direction of one call costs on a link."""
+    from linkwatch.commands.planning import print_cost
+
+    typer.echo(
+        print_cost(codec, packet_ms, framing, ipv6=ipv6, srtp_tag_octets=srtp_tag, as_json=as_json)
+    )
+
+
+@app.command()
+def plan(
+    file: Annotated[Path, typer.Argument(metavar="FILE", help="A plan (YAML).")],
+    as_json: AsJson = False,
+) -> None:
+    """Work out a plan: what a call costs, how many fit, what the reserve leaves."""
+    from linkwatch.commands.planning import print_plan
+    from linkwatch.plan.planfile import load_plan
+
+    typer.echo(print_plan(load_plan(file), as_json=as_json))
+
+
+@app.command()
+def taps(as_json: AsJson = False) -> None:
+    """List the ports there are, and which may be read."""
+    from linkwatch.commands.taps import print_taps
+    from linkwatch.tap.ports import list_ports
+
+    typer.echo(print_taps(list_ports(), as_json=as_json))
+
+
 def main() -> None:
     """Runs the command line; every error a person can put right is one line on stderr."""
     try:

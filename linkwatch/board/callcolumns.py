@@ -2,10 +2,11 @@
 
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import lru_cache
 
 from rich.cells import cell_len
 
-from linkwatch.board.lines import Line, Piece
+from linkwatch.board.lines import Line, Piece, joined
 from linkwatch.board.text import decimal, duration, padded, safe
 from linkwatch.plan.marking import marking_name
 from linkwatch.watch.snapshot import CallState
@@ -112,6 +113,7 @@ COLUMNS = (
 )
 
 
+@lru_cache(maxsize=64)
 def columns_for(width: int) -> tuple[tuple[Column, ...], int]:
     """Returns the columns that find space in `width` cells, and the cells left for the two ends.
 
@@ -139,6 +141,7 @@ def _end(end: str, width: int) -> str:
     return padded(end, width)
 
 
+@lru_cache(maxsize=64)
 def head_line(width: int) -> Line:
     """Returns the table's heading."""
     columns, left = columns_for(width)
@@ -159,4 +162,4 @@ def call_line(row: Row, width: int) -> Line:
         cell = padded(text, column.width or left, right=column.right)
         shown.append(Piece(gap + cell, "alarm" if judged and call.up else tone))
         gap = " "
-    return tuple(shown)
+    return joined(shown)

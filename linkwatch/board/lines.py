@@ -5,6 +5,8 @@ terminal, compared with what stands on the screen already, and never be taken fo
 """
 
 from collections.abc import Iterable
+from itertools import groupby
+from operator import attrgetter
 from typing import NamedTuple
 
 from rich.cells import cell_len
@@ -33,6 +35,14 @@ BLANK: Line = ()
 def line(*pieces: Piece | str) -> Line:
     """Returns a line of pieces; bare text is in the plain tone."""
     return tuple(piece if isinstance(piece, Piece) else Piece(piece) for piece in pieces if piece)
+
+
+def joined(pieces: Iterable[Piece]) -> Line:
+    """Returns a line in which neighbours of one tone are one piece: fewer are faster to paint."""
+    return tuple(
+        Piece("".join(piece.text for piece in run), tone)
+        for tone, run in groupby(pieces, key=attrgetter("tone"))
+    )
 
 
 def plain(shown: Line) -> str:

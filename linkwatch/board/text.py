@@ -6,6 +6,7 @@ that move the cursor, turn the writing round or hide in no width at all: `safe` 
 
 import unicodedata
 from datetime import datetime
+from functools import lru_cache
 
 from rich.cells import cell_len, get_character_cell_size
 
@@ -43,6 +44,12 @@ def safe(text: str, limit: int) -> str:
     """
     if text.isascii() and text.isprintable() and len(text) <= limit:
         return text
+    return _cleaned(text[: max(limit, 0) * (1 + MARKS_PER_LETTER) + 2], limit)
+
+
+@lru_cache(maxsize=4096)
+def _cleaned(text: str, limit: int) -> str:
+    """Returns what `safe` returns; the text is no longer than what the limit can need."""
     most = max(limit, 0) * (1 + MARKS_PER_LETTER) + 1
     shown = "".join(_harmless(text[:most]))
     if len(text) <= most and cell_len(shown) <= limit:

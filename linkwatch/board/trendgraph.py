@@ -4,7 +4,7 @@ from collections.abc import Sequence
 from math import isfinite
 
 from linkwatch.board.history import History
-from linkwatch.board.lines import Line, Piece, line
+from linkwatch.board.lines import Line, Piece, joined, line
 from linkwatch.board.text import kbps
 from linkwatch.watch.snapshot import LinkState
 
@@ -55,31 +55,24 @@ def _axis(row: int, rows: int, top: float, budget: float | None, limit_row: int 
 def _row(
     columns: Sequence[tuple[float, float] | None], row: int, per_row: float, limit_row: int | None
 ) -> Line:
-    """Returns one row of the graph, with cells of one tone joined."""
-    pieces: list[Piece] = []
-    for column in columns:
-        glyph, tone = _cell(column, row, per_row, limit_row)
-        if pieces and pieces[-1].tone == tone:
-            pieces[-1] = Piece(pieces[-1].text + glyph, tone)
-        else:
-            pieces.append(Piece(glyph, tone))
-    return tuple(pieces)
+    """Returns one row of the graph."""
+    return joined(_cell(column, row, per_row, limit_row) for column in columns)
 
 
 def _cell(
     column: tuple[float, float] | None, row: int, per_row: float, limit_row: int | None
-) -> tuple[str, str]:
-    """Returns the glyph and tone of one cell."""
+) -> Piece:
+    """Returns one cell: used before reserved before the budget's line."""
     used, reserved = column or (0.0, 0.0)
     eighths = round((used / per_row - row) * 8) if isfinite(used) else 0
     beyond = limit_row is not None and row > limit_row
     if eighths >= len(EIGHTHS) - 1:
-        return (BEYOND, "alarm") if beyond else (EIGHTHS[-1], "accent")
+        return Piece(BEYOND, "alarm") if beyond else Piece(EIGHTHS[-1], "accent")
     if eighths > 0:
-        return EIGHTHS[eighths], "alarm" if beyond else "accent"
+        return Piece(EIGHTHS[eighths], "alarm" if beyond else "accent")
     if isfinite(reserved) and reserved / per_row > row + 0.5:
-        return RESERVED, "alarm" if beyond else "second"
-    return (LIMIT, "warn") if row == limit_row else (" ", "plain")
+        return Piece(RESERVED, "alarm" if beyond else "second")
+    return Piece(LIMIT, "warn") if row == limit_row else Piece(" ")
 
 
 def _foot(minutes: int, each: int, columns: int) -> Line:

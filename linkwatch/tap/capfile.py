@@ -150,7 +150,7 @@ class CaptureFile:
 def _open(path: Path, name: str) -> tuple[BufferedReader, int]:
     """Returns the file and its length, 0 where it has none."""
     if str(path) == STANDARD_INPUT:
-        return cast(BufferedReader, sys.stdin.buffer), 0
+        return cast("BufferedReader", sys.stdin.buffer), 0
     try:
         kind = path.stat()
         if stat.S_ISDIR(kind.st_mode):

@@ -3,12 +3,13 @@
 from functools import lru_cache
 from ipaddress import IPv4Address, IPv6Address, ip_address
 
-from linkwatch.plan.planfile import LinkPlan, Plan
+from linkwatch.plan.model import Direction, LinkPlan, Plan
 from linkwatch.voice.calls import Call, End
 from linkwatch.voice.streams import address_text
 
-TO_SITE, FROM_SITE = "to_site", "from_site"
-OTHER_WAY = {TO_SITE: FROM_SITE, FROM_SITE: TO_SITE}
+TO_SITE: Direction = "to_site"
+FROM_SITE: Direction = "from_site"
+OTHER_WAY: dict[Direction, Direction] = {TO_SITE: FROM_SITE, FROM_SITE: TO_SITE}
 
 
 class Crossings:
@@ -23,19 +24,19 @@ class Crossings:
         crossed = (i for i, link in enumerate(self._links) if _direction(link, *ends))
         return next(crossed, 0)
 
-    def of(self, call: Call) -> tuple[str | None, ...]:
+    def of(self, call: Call) -> tuple[Direction | None, ...]:
         """Returns for each link which way the call's forward streams cross it, or None."""
         return self._between(*call.ends)
 
     @lru_cache(maxsize=65_536)  # noqa: B019 - one plan lives as long as its monitor
-    def _between(self, one: End, other: End) -> tuple[str | None, ...]:
+    def _between(self, one: End, other: End) -> tuple[Direction | None, ...]:
         ends = ip_address(address_text(one[0])), ip_address(address_text(other[0]))
         return tuple(_direction(link, *ends) for link in self._links)
 
 
 def _direction(
     link: LinkPlan, source: IPv4Address | IPv6Address, destination: IPv4Address | IPv6Address
-) -> str | None:
+) -> Direction | None:
     """Returns which way a stream crosses a link.
 
     Without site prefixes every stream counts; then the end with the lower address is taken for

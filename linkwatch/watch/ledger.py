@@ -7,7 +7,7 @@ from functools import lru_cache
 from linkwatch.errors import InputError
 from linkwatch.plan.codecs import find_codec
 from linkwatch.plan.cost import call_cost
-from linkwatch.plan.planfile import LinkPlan, Plan
+from linkwatch.plan.model import Direction, LinkPlan, Plan
 from linkwatch.voice.calls import Call
 from linkwatch.voice.figures import StreamState
 from linkwatch.watch.crossing import FROM_SITE, OTHER_WAY, TO_SITE, Crossings
@@ -71,7 +71,9 @@ class Ledger:
             for link, both in zip(self._plan.links, sums, strict=True)
         )
 
-    def _enter(self, call: Call, index: int, forward: str, both: dict[str, _Sum]) -> None:
+    def _enter(
+        self, call: Call, index: int, forward: Direction, both: dict[Direction, _Sum]
+    ) -> None:
         for serial, carried in call.carried.items():
             way = forward if serial in call.forward else OTHER_WAY[forward]
             both[way].link_octets += carried.link_octets[index]
@@ -131,7 +133,7 @@ def speaking(call: Call, forward: bool) -> StreamState | None:
 
 
 def _link_state(
-    link: LinkPlan, both: dict[str, _Sum], interval_s: float, load: Load | None
+    link: LinkPlan, both: dict[Direction, _Sum], interval_s: float, load: Load | None
 ) -> LinkState:
     budget = link.budget_for(TO_SITE)
     to_site = _direction_state(link, TO_SITE, both[TO_SITE], interval_s)
@@ -155,7 +157,9 @@ def _link_state(
     )
 
 
-def _direction_state(link: LinkPlan, way: str, total: _Sum, interval_s: float) -> DirectionState:
+def _direction_state(
+    link: LinkPlan, way: Direction, total: _Sum, interval_s: float
+) -> DirectionState:
     budget = link.budget_for(way)
     capacity = getattr(link.capacity, way) if link.capacity else None
     return DirectionState(

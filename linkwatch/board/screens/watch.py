@@ -128,7 +128,9 @@ class WatchScreen(Screen[None]):
         self.action_go(picked.pane)
 
     def _in_front(self, pane: str) -> None:
-        self.pane = pane
         panes = self.query_one("#panes")
+        if panes.has_class(f"-{pane}"):
+            return
+        self.pane = pane
         panes.set_classes(f"-{pane}")
         self.query_one(PaneBar).point_to(pane)

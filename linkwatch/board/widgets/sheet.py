@@ -78,7 +78,7 @@ class Sheet(ScrollView):
     def render_line(self, y: int) -> Strip:
         """Returns the strip at a height of the pane."""
         strip = self.strip_of(self.line_at(y + self.scroll_offset.y))
-        return strip.crop_extend(0, self.size.width, self.rich_style)
+        return strip.crop_extend(0, self.size.width, self.get_component_rich_style("sheet--plain"))
 
     @property
     def words(self) -> str:
