@@ -101,6 +101,7 @@ class WatchScreen(Screen[None]):
         if self.pane == "trend":
             trend.change_span()
         bar.minutes = trend.minutes
+        bar.redraw()
         self.action_go("trend")
 
     def action_link(self) -> None:
