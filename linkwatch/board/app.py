@@ -16,6 +16,7 @@ from linkwatch.board.screens.watch import WatchScreen
 from linkwatch.board.text import safe
 from linkwatch.board.theme import NIGHT
 from linkwatch.board.widgets.calls import Calls
+from linkwatch.board.widgets.masthead import Masthead
 from linkwatch.errors import LinkwatchError
 from linkwatch.watch.snapshot import Snapshot
 
@@ -79,6 +80,7 @@ class Board(App[int]):
         self._cautions = cautions
         self._screenshots = screenshots
         self._latest: Snapshot | None = None
+        self._shown: Snapshot | None = None
         self._paused = False
         self.watch_screen = WatchScreen(title)
         self.register_theme(NIGHT)
@@ -109,18 +111,21 @@ class Board(App[int]):
 
     def on_arrived(self, arrived: Arrived) -> None:
         """Shows a snapshot, unless the picture is held."""
-        first = self._latest is None
         self._latest = arrived.snapshot
         self.watch_screen.remember(arrived.snapshot)
         if not self._paused:
             self._show(arrived.snapshot)
+
+    def _show(self, snapshot: Snapshot) -> None:
+        first, self._shown = self._shown is None, snapshot
+        for screen in self._boards():
+            screen.take(snapshot)
         if first:
             self.watch_screen.refresh_bindings()
 
-    def _show(self, snapshot: Snapshot) -> None:
-        self.watch_screen.take(snapshot)
-        if isinstance(self.screen, CallPage):
-            self.screen.take(snapshot)
+    def _boards(self) -> list[WatchScreen | CallPage]:
+        """Returns the open screens that show snapshots."""
+        return [s for s in self.screen_stack if isinstance(s, WatchScreen | CallPage)]
 
     def on_finished(self, finished: Finished) -> None:
         """Says why no snapshot follows; the last one stays."""
@@ -128,17 +133,24 @@ class Board(App[int]):
 
     def on_calls_opened(self, opened: Calls.Opened) -> None:
         """Opens a call's page."""
-        if self._latest:
-            self.push_screen(CallPage(opened.call, self._latest))
+        if self._shown:
+            self.push_screen(CallPage(self.title, opened.call, self._shown))
+            self.call_after_refresh(self._mark_paused)
 
     def action_pause(self) -> None:
         """Holds the picture, or lets it go on with the latest snapshot."""
         if self._latest is None:
             return
         self._paused = not self._paused
-        self.watch_screen.pause(self._latest.time if self._paused else None)
+        self._mark_paused()
         if not self._paused:
             self._show(self._latest)
+
+    def _mark_paused(self) -> None:
+        """Says on every open screen that the picture is held, or no longer."""
+        since = self._shown.time if self._paused and self._shown else None
+        for screen in self._boards():
+            screen.query_one(Masthead).pause(since)
 
     def action_help(self) -> None:
         """Opens the help page."""

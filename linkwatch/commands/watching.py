@@ -1,8 +1,9 @@
 """The commands that watch a source: read, log, count, and the dashboard."""
 
 import json
+import signal
 import sys
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from pathlib import Path
 from typing import Any
 
@@ -14,6 +15,12 @@ from linkwatch.watch.monitor import Monitor
 from linkwatch.watch.snapshot import Snapshot
 
 Out = Callable[[str], None]
+
+
+def say(line: str) -> None:
+    """Prints a line at once, for whoever reads along."""
+    print(line, flush=True)
+
 
 COUNT_S = 5.0  # long enough for every call to have shown itself
 
@@ -39,7 +46,7 @@ def plan_for(path: Path | None, source: Source) -> Plan:
 
 
 def read(
-    path: Path, plan: Plan, *, every_s: float, as_json: bool, judge: bool, out: Out = print
+    path: Path, plan: Plan, *, every_s: float, as_json: bool, judge: bool, out: Out = say
 ) -> int:
     """Reads a capture and prints what it held; returns the exit status."""
     last: list[Snapshot] = []
@@ -69,21 +76,21 @@ def read(
 
 
 def log(
-    source: Source, plan: Plan, *, every_s: float, as_json: bool, judge: bool, out: Out = print
+    source: Source, plan: Plan, *, every_s: float, as_json: bool, judge: bool, out: Out = say
 ) -> int:
     """Prints a line for each snapshot until the source ends; returns the exit status."""
     bad = False
-    for snapshot in _watch(source, plan, every_s).snapshots():
+    for snapshot in _snapshots(source, plan, every_s):
         line = json.dumps(export.snapshot_json(snapshot)) if as_json else text.log_line(snapshot)
         out(line)
         bad = bad or bool(snapshot.alarms)
     return 1 if judge and bad else 0
 
 
-def count(source: Source, plan: Plan, *, as_json: bool, judge: bool, out: Out = print) -> int:
+def count(source: Source, plan: Plan, *, as_json: bool, judge: bool, out: Out = say) -> int:
     """Prints how many calls are up when the time to listen is over; returns the exit status."""
     last = None
-    for snapshot in _watch(source, plan, every_s=1.0).snapshots():
+    for snapshot in _snapshots(source, plan, every_s=1.0):
         last = snapshot
     if last is None:
         raise InputError(source.name, got="no frame at all", remedy="Listen longer, with --for.")
@@ -111,7 +118,26 @@ def board(source: Source, plan: Plan, *, every_s: float = 1.0, need_packets: boo
     return app.return_code or 0
 
 
-def _watch(source: Source, plan: Plan, every_s: float) -> Watch:
+def _snapshots(source: Source, plan: Plan, every_s: float) -> Iterator[Snapshot]:
+    """Yields the snapshots of a source; one that is interrupted still has its last one.
+
+    Raises:
+        KeyboardInterrupt: It was interrupted from the keyboard, after the last snapshot.
+    """
     tap = open_tap(source)
     monitor = Monitor(plan, tap.name, every_s=every_s, with_calls=False)
-    return Watch(tap, monitor, speed=source.speed, for_s=source.for_s)
+    watch = Watch(tap, monitor, speed=source.speed, for_s=source.for_s)
+    came: list[int] = []
+
+    def stop(number: int, _frame: object) -> None:
+        came.append(number)
+        watch.stop()
+
+    before = {number: signal.signal(number, stop) for number in (signal.SIGINT, signal.SIGTERM)}
+    try:
+        yield from watch.snapshots()
+    finally:
+        for number, handler in before.items():
+            signal.signal(number, handler)
+    if signal.SIGINT in came:
+        raise KeyboardInterrupt

@@ -69,6 +69,7 @@ class Monitor:
         )
         self._tick: int | None = None  # the next one
         self._counters: CounterReading | None = None
+        self._load: Load | None = None
         self._tap = TapStatistics()
 
     def feed(
@@ -119,9 +120,9 @@ class Monitor:
         interval_s = self._every / SECOND_NS
         self._listener.conclude(now)
         calls = self._listener.calls.live.values()
-        load = _load(self._counters, counters)
+        self._load = _load(self._counters, counters, self._load)
         self._counters = counters
-        links = self._ledger.enter(calls, interval_s, load)
+        links = self._ledger.enter(calls, interval_s, self._load)
         voice = self._listener.statistics()
         self._alarms.look(
             (
@@ -188,10 +189,12 @@ class Monitor:
         return most_at_once((call.start, call.end) for call in calls), most_at_once(spans.values())
 
 
-def _load(before: CounterReading | None, now: CounterReading | None) -> Load | None:
-    """Returns the traffic between two readings, where there are two."""
+def _load(
+    before: CounterReading | None, now: CounterReading | None, last: Load | None
+) -> Load | None:
+    """Returns the traffic between two readings; without a new one, what it was last."""
     if before is None or now is None or now.time <= before.time:
-        return None
+        return last
     seconds = (now.time - before.time) / SECOND_NS
     return Load(
         (now.received - before.received) * 8 / 1000 / seconds,

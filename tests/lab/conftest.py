@@ -47,9 +47,10 @@ class Wire:
 
     def take_down(self):
         for process in self._started:
-            if process.poll() is None:
-                process.kill()
-                process.communicate()
+            process.kill()
+            process.wait()
+            process.stdout.close()
+            process.stderr.close()
         for space in self._spaces:
             subprocess.run(["ip", "netns", "del", space], check=False, capture_output=True)
 
@@ -86,16 +87,17 @@ class Recording:
         _, err = self._process.communicate(timeout=10)
         assert self._process.returncode == 0, err
 
-    def count(self, source, port):
-        """Returns how many UDP datagrams of this source the capture holds, as dpkt finds them."""
-        packed, found = ip_address(source).packed, 0
+    def ip_octets(self, source, ports):
+        """Returns the IP length of each datagram from these ports, as dpkt finds them."""
+        packed, lengths = ip_address(source).packed, []
         with self._path.open("rb") as file:
             for _, frame in dpkt.pcap.Reader(file):
                 ip = dpkt.ethernet.Ethernet(frame).data
                 if not isinstance(ip, dpkt.ip.IP) or not isinstance(ip.data, dpkt.udp.UDP):
                     continue
-                found += ip.src == packed and ip.data.sport == port
-        return found
+                if ip.src == packed and ip.data.sport in ports:
+                    lengths.append(ip.len)
+        return lengths
 
 
 def why_not():

@@ -8,6 +8,7 @@ import signal
 import socket
 import sys
 import time
+from pathlib import Path
 
 import dpkt
 
@@ -21,7 +22,7 @@ def record(port, path):
     heard.settimeout(0.2)
     ended = []
     signal.signal(signal.SIGTERM, lambda *_: ended.append(True))
-    with open(path, "wb") as file:
+    with Path(path).open("wb") as file:
         writer = dpkt.pcap.Writer(file, nano=True)
         print("ready", flush=True)
         while not ended:

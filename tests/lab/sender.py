@@ -23,7 +23,9 @@ CODECS = {
 def send(codec, host, port, local_port, packets, dscp=46):
     """Sends so many packets of 20 ms; returns the packets and the payload octets sent."""
     encoder, rate, samples, payload_type = CODECS[codec]
-    url = f"rtp://{host}:{port}?localrtpport={local_port}&localrtcpport={local_port + 1}&dscp={dscp}"
+    url = (
+        f"rtp://{host}:{port}?localrtpport={local_port}&localrtcpport={local_port + 1}&dscp={dscp}"
+    )
     options = {"payload_type": str(payload_type)}
     sent = octets = 0
     with av.open(url, "w", format="rtp", options=options) as output:

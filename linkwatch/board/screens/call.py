@@ -11,6 +11,7 @@ from textual.widgets import Footer
 from linkwatch.board.callpage import call_lines
 from linkwatch.board.lines import Line, Piece, line
 from linkwatch.board.widgets.banner import Banner
+from linkwatch.board.widgets.masthead import Masthead
 from linkwatch.board.widgets.sheet import Sheet
 from linkwatch.watch.snapshot import CallState, Snapshot
 
@@ -40,13 +41,15 @@ class CallPage(Screen[None]):
                 tooltip="back to the board"),
     ]  # fmt: skip
 
-    def __init__(self, call: CallState, snapshot: Snapshot) -> None:
+    def __init__(self, title: str, call: CallState, snapshot: Snapshot) -> None:
         super().__init__()
+        self._title = title
         self._call = call
         self._snapshot = snapshot
 
     def compose(self) -> ComposeResult:
         """Lays out the page."""
+        yield Masthead(self._title)
         yield Banner()
         yield CallSheet(self._call)
         yield Footer(compact=True, show_command_palette=False)

@@ -74,12 +74,6 @@ class WatchScreen(Screen[None]):
         """Keeps a snapshot for the trend, although the picture is held."""
         self.query_one(Trend).remember(snapshot)
 
-    def pause(self, time: int | None) -> None:
-        """Says since when the picture is held, or no longer."""
-        masthead = self.query_one(Masthead)
-        masthead.paused = time
-        masthead.redraw()
-
     def end(self, text: str) -> None:
         """Says why no snapshot follows."""
         ending = self.query_one("#ending", Static)

@@ -45,6 +45,11 @@ class Masthead(Sheet, can_focus=False):
         self._title = title
         self.paused: int | None = None
 
+    def pause(self, time: int | None) -> None:
+        """Says since when the picture is held (nanoseconds), or no longer."""
+        self.paused = time
+        self.redraw()
+
     def lines_of(self, snapshot: Snapshot, space: Size) -> list[Line]:
         """Returns the one line."""
         return [masthead_line(self._title, snapshot, self.paused, space.width)]
