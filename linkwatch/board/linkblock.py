@@ -105,7 +105,7 @@ def _way(label: str, link: LinkState, way: DirectionState, cells: int) -> list[L
     places = places_of(link, way)
     if places is None:
         return [
-            line(name, Piece("no limit in the plan", "faint")),
+            line(name, Piece(_without_places(way), "faint")),
             line(padded(f"{calls} up", LABEL_CELLS)),
             _rates(way),
         ]
@@ -130,10 +130,17 @@ def _short_way(label: str, link: LinkState, way: DirectionState, cells: int) -> 
     strip = cells - SHORT_LABEL_CELLS - SHORT_CALLS_CELLS - len(rates)
     calls = padded(_calls(link, way), SHORT_CALLS_CELLS)
     places = places_of(link, way)
-    if places is None or strip <= 0:
-        return line(name, calls, f"{kbps(way.reserved_kbps)} kbit/s reserved, no limit")
+    if places is None:
+        return line(name, calls, f"{_without_places(way)}, {kbps(way.reserved_kbps)} kbit/s")
     row = fitted(places_line(places, scale_for(places, strip), strip), strip)
     return line(name, calls, *row, Piece(rates, "faint"))
+
+
+def _without_places(way: DirectionState) -> str:
+    """Returns why a direction has no places."""
+    if way.room_calls is None:
+        return "no limit in the plan"
+    return "the budget holds no planned call"
 
 
 def _calls(link: LinkState, way: DirectionState) -> str:

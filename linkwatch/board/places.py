@@ -40,7 +40,7 @@ class Places:
 
 
 def places_of(link: LinkState, way: DirectionState) -> Places | None:
-    """Returns a direction's budget in places, or None where the plan sets it no limit.
+    """Returns a direction's budget in places, or None where it has none: no limit, or no call fits.
 
     While there is room, exactly as many places are free as the ledger says that calls fit. The
     others are shared out by the limit that is the more exhausted, calls or kbit/s.
@@ -82,8 +82,8 @@ class Scale:
     """How places become cells.
 
     Attributes:
-        cells: Cells per place; 0 where several places share a cell.
-        each: Places per cell.
+        cells: Cells per place.
+        each: Places that share them.
     """
 
     cells: int

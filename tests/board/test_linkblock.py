@@ -47,6 +47,16 @@ def test_a_link_without_limit_says_so(make):
     assert "□" not in shown
 
 
+@pytest.mark.parametrize("space", SPACES)
+def test_a_budget_that_holds_no_call_is_not_called_unlimited(make, space):
+    """A budget smaller than one planned call is full, and says why."""
+    way = make.direction(0, room_calls=0, budget_kbps=20.0)
+    link = make.link(planned_calls=0, reserve_calls=0, to_site=way, from_site=way)
+    shown = words(make.snapshot(0, links=(link,)), space)
+    assert "the budget holds no planned call" in shown
+    assert "no limit" not in shown
+
+
 def test_guessed_directions_are_called_guessed(make):
     """Without site prefixes the block does not pretend to know which way is which."""
     link = make.link(directions_known=False)
