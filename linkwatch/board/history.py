@@ -3,7 +3,7 @@
 from collections import deque
 from dataclasses import dataclass
 
-from linkwatch.watch.snapshot import LinkState
+from linkwatch.watch.snapshot import DirectionState, LinkState
 
 LONGEST_MINUTES = 60
 SECOND = 1_000_000_000
@@ -11,7 +11,7 @@ SECOND = 1_000_000_000
 
 @dataclass(frozen=True, slots=True)
 class Moment:
-    """The highest rates of one second, in the busier direction.
+    """The highest rates of one second.
 
     Attributes:
         second: Seconds since 1970 UTC.
@@ -24,6 +24,22 @@ class Moment:
     reserved_kbps: float
 
 
+def drawn_ways(link: LinkState) -> tuple[str, tuple[DirectionState, ...]]:
+    """Returns which directions of a link are remembered as one, and what to call them.
+
+    Of two directions with the same budget that is the busier one at any moment. Where the budgets
+    differ, one line could not be held against both: then it is the direction with less of it.
+    """
+    to_site, from_site = link.to_site, link.from_site
+    if to_site.budget_kbps == from_site.budget_kbps:
+        return "busier direction", (to_site, from_site)
+    if from_site.budget_kbps is None or to_site.budget_kbps is None:
+        to_limited = to_site.budget_kbps is not None
+    else:
+        to_limited = to_site.budget_kbps < from_site.budget_kbps
+    return ("to site", (to_site,)) if to_limited else ("from site", (from_site,))
+
+
 class History:
     """The last hour of one link. Time that goes back begins a new one."""
 
@@ -33,8 +49,9 @@ class History:
     def take(self, time: int, link: LinkState) -> None:
         """Keeps what a link shows at a time (nanoseconds since 1970 UTC)."""
         second = time // SECOND
-        used = max(link.to_site.used_kbps, link.from_site.used_kbps)
-        reserved = max(link.to_site.reserved_kbps, link.from_site.reserved_kbps)
+        _, ways = drawn_ways(link)
+        used = max(way.used_kbps for way in ways)
+        reserved = max(way.reserved_kbps for way in ways)
         if self._moments and second < self._moments[-1].second:
             self._moments.clear()
         if self._moments and second == self._moments[-1].second:

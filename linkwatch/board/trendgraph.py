@@ -1,18 +1,20 @@
-"""The trend as lines: voice used and reserved against the budget, on a scale that stays."""
+"""The trend as lines: voice used and reserved against the budget, on a scale that stays.
 
-from collections.abc import Sequence
+Used is drawn in blocks, in ▓ where it is over the budget; reserved in ░ above it.
+"""
+
+from dataclasses import dataclass
 from math import isfinite
 
 from linkwatch.board.history import History
 from linkwatch.board.lines import Line, Piece, joined, line
 from linkwatch.board.text import kbps
-from linkwatch.watch.snapshot import LinkState
 
 EIGHTHS = " ▁▂▃▄▅▆▇█"
 RESERVED, BEYOND, LIMIT = "░", "▓", "╌"
 AXIS_CELLS = 9
 HEADROOM = 1.2  # above the budget, so that what is over it can be seen
-LEAST_ROWS = 3
+LEAST_ROWS, LEAST_COLUMNS = 3, 10
 
 
 def scale_top(budget_kbps: float | None, peak_kbps: float) -> float:
@@ -23,56 +25,80 @@ def scale_top(budget_kbps: float | None, peak_kbps: float) -> float:
     return top
 
 
+@dataclass(frozen=True, slots=True)
+class Ground:
+    """What a graph is drawn on.
+
+    Attributes:
+        rows: Its rows.
+        top: The upper end of the scale, kbit/s.
+        budget: The budget, kbit/s, or None without one.
+    """
+
+    rows: int
+    top: float
+    budget: float | None
+
+    @property
+    def per_row(self) -> float:
+        """What a row stands for, kbit/s."""
+        return self.top / self.rows
+
+    @property
+    def limit_row(self) -> int | None:
+        """The row of the budget, 0 at the bottom."""
+        return int(self.budget / self.per_row) if self.budget is not None else None
+
+    def is_beyond(self, rate_kbps: float, row: int) -> bool:
+        """Whether a rate is over the budget, and a row shows it."""
+        if self.budget is None or self.limit_row is None:
+            return False
+        return rate_kbps > self.budget and row >= self.limit_row
+
+
 def trend_lines(
-    history: History, link: LinkState, minutes: int, width: int, rows: int
+    history: History, budget: float | None, minutes: int, width: int, rows: int
 ) -> list[Line]:
-    """Returns the graph of a link's last minutes in a space of cells and rows."""
-    graph_rows = rows - 1
-    if graph_rows < LEAST_ROWS or width <= AXIS_CELLS + 10:
+    """Returns the graph of the last minutes in a space of cells and rows.
+
+    Args:
+        history: What is drawn.
+        budget: The budget it is held against, kbit/s, or None without one.
+        minutes: How many minutes.
+        width: Cells, the axis among them.
+        rows: Rows, the foot among them.
+    """
+    if rows <= LEAST_ROWS or width <= AXIS_CELLS + LEAST_COLUMNS:
         return [line(Piece("too little space for the trend", "faint"))]
     each, columns = history.columns(minutes, width - AXIS_CELLS)
-    limits = [way.budget_kbps for way in (link.to_site, link.from_site)]
-    budget = min((limit for limit in limits if limit is not None), default=None)
     peak = max((max(column) for column in columns if column), default=0.0)
-    top = scale_top(budget, peak)
-    limit_row = int(budget / top * graph_rows) if budget else None
+    ground = Ground(rows - 1, scale_top(budget, peak), budget)
     shown: list[Line] = [
-        _axis(row, graph_rows, top, budget, limit_row)
-        + _row(columns, row, top / graph_rows, limit_row)
-        for row in reversed(range(graph_rows))
+        _axis(row, ground) + joined(_cell(column, row, ground) for column in columns)
+        for row in reversed(range(ground.rows))
     ]
     shown.append(_foot(minutes, each, len(columns)))
     return shown
 
 
-def _axis(row: int, rows: int, top: float, budget: float | None, limit_row: int | None) -> Line:
-    if budget is not None and row == limit_row:
-        return line(Piece(f"{kbps(budget)} ", "strong"), Piece("┤", "faint"))
-    label = kbps(top) if row == rows - 1 else ""
+def _axis(row: int, ground: Ground) -> Line:
+    if row == ground.limit_row:
+        return line(Piece(f"{kbps(ground.budget)} ", "strong"), Piece("┤", "faint"))
+    label = kbps(ground.top) if row == ground.rows - 1 else ""
     return line(Piece(f"{label:>7} │", "faint"))
 
 
-def _row(
-    columns: Sequence[tuple[float, float] | None], row: int, per_row: float, limit_row: int | None
-) -> Line:
-    """Returns one row of the graph."""
-    return joined(_cell(column, row, per_row, limit_row) for column in columns)
-
-
-def _cell(
-    column: tuple[float, float] | None, row: int, per_row: float, limit_row: int | None
-) -> Piece:
-    """Returns one cell: used before reserved before the budget's line."""
+def _cell(column: tuple[float, float] | None, row: int, ground: Ground) -> Piece:
+    """Returns one cell: what is used lies before what is reserved, and both before the limit."""
     used, reserved = column or (0.0, 0.0)
-    eighths = round((used / per_row - row) * 8) if isfinite(used) else 0
-    beyond = limit_row is not None and row > limit_row
-    if eighths >= len(EIGHTHS) - 1:
-        return Piece(BEYOND, "alarm") if beyond else Piece(EIGHTHS[-1], "accent")
+    eighths = round((used / ground.per_row - row) * 8) if isfinite(used) else 0
     if eighths > 0:
-        return Piece(EIGHTHS[eighths], "alarm" if beyond else "accent")
-    if isfinite(reserved) and reserved / per_row > row + 0.5:
-        return Piece(RESERVED, "alarm" if beyond else "second")
-    return Piece(LIMIT, "warn") if row == limit_row else Piece(" ")
+        if ground.is_beyond(used, row):
+            return Piece(BEYOND, "alarm")
+        return Piece(EIGHTHS[min(eighths, len(EIGHTHS) - 1)], "accent")
+    if isfinite(reserved) and reserved / ground.per_row > row + 0.5:
+        return Piece(RESERVED, "alarm" if ground.is_beyond(reserved, row) else "second")
+    return Piece(LIMIT, "warn") if row == ground.limit_row else Piece(" ")
 
 
 def _foot(minutes: int, each: int, columns: int) -> Line:

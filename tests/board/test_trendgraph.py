@@ -6,7 +6,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from linkwatch.board.history import History
+from linkwatch.board.history import History, drawn_ways
 from linkwatch.board.lines import plain
 from linkwatch.board.trendgraph import BEYOND, LIMIT, RESERVED, scale_top, trend_lines
 
@@ -22,14 +22,14 @@ def a_history(make, used, reserved=0.0, seconds=300):
     return history
 
 
-def graph(history, link, width=80, rows=12):
+def graph(history, budget=660.0, width=80, rows=12):
     """Returns the graph as text lines."""
-    return [plain(row) for row in trend_lines(history, link, 5, width, rows)]
+    return [plain(row) for row in trend_lines(history, budget, 5, width, rows)]
 
 
 def test_use_reserve_and_budget_have_glyphs_of_their_own(make):
     """Without any colour one sees what is used, what is reserved, and the budget's line."""
-    shown = "\n".join(graph(a_history(make, 200.0, 400.0), make.link()))
+    shown = "\n".join(graph(a_history(make, 200.0, 400.0)))
     assert "█" in shown
     assert RESERVED in shown
     assert LIMIT in shown
@@ -38,13 +38,15 @@ def test_use_reserve_and_budget_have_glyphs_of_their_own(make):
 
 def test_what_is_over_the_budget_looks_different(make):
     """Use above the budget's line is drawn with another glyph."""
-    assert BEYOND in "".join(graph(a_history(make, 900.0), make.link()))
-    assert BEYOND not in "".join(graph(a_history(make, 600.0), make.link()))
+    for used in (661.0, 900.0, 9e6):
+        assert BEYOND in "".join(graph(a_history(make, used)))
+    for used in (0.0, 600.0, 660.0):
+        assert BEYOND not in "".join(graph(a_history(make, used)))
 
 
 def test_without_a_budget_there_is_no_line(make):
     """A link without limit has a trend, and no limit is invented for it."""
-    assert LIMIT not in "".join(graph(a_history(make, 200.0), make.link_without_limit())[:-1])
+    assert LIMIT not in "".join(graph(a_history(make, 200.0), None)[:-1])
 
 
 def test_too_little_space_is_said():
@@ -80,6 +82,15 @@ def test_an_hour_is_kept_and_no_more(make):
     each, columns = history.columns(60, 3600)
     assert each == 1
     assert sum(column is not None for column in columns) == 3600
+
+
+def test_directions_with_budgets_of_their_own_are_not_mixed(make):
+    """A line is held against the budget of the direction that it shows."""
+    wide, narrow = make.direction(20, budget_kbps=900.0), make.direction(5, budget_kbps=300.0)
+    assert drawn_ways(make.link(to_site=wide, from_site=narrow)) == ("from site", (narrow,))
+    assert drawn_ways(make.link(to_site=narrow, from_site=wide)) == ("to site", (narrow,))
+    unlimited = make.direction(20, budget_kbps=None)
+    assert drawn_ways(make.link(to_site=wide, from_site=unlimited)) == ("to site", (wide,))
 
 
 def test_time_that_goes_back_begins_anew(make):

@@ -2,7 +2,7 @@
 
 from textual.geometry import Size
 
-from linkwatch.board.history import History
+from linkwatch.board.history import History, drawn_ways
 from linkwatch.board.lines import Line, Piece, line
 from linkwatch.board.text import safe
 from linkwatch.board.trendgraph import trend_lines
@@ -44,7 +44,10 @@ class Trend(Sheet, can_focus=True):
         if not snapshot.tap.hearing:
             return [line(Piece(" Counters only: the voice on the link is not known.", "faint"))]
         link = snapshot.links[self.chosen % len(snapshot.links)]
-        title = f" {safe(link.name, 20)}, last {self.minutes} min, busier direction"
+        which, ways = drawn_ways(link)
+        title = f" {safe(link.name, 20)}, last {self.minutes} min, {which}"
         history = self._histories.setdefault(link.name, History())
-        graph = trend_lines(history, link, self.minutes, space.width, space.height - 1)
+        graph = trend_lines(
+            history, ways[0].budget_kbps, self.minutes, space.width, space.height - 1
+        )
         return [line(Piece(title, "faint")), *graph]
