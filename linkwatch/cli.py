@@ -233,6 +233,18 @@ def taps(as_json: AsJson = False) -> None:
     typer.echo(print_taps(list_ports(), as_json=as_json))
 
 
+@app.command()
+def bench(
+    streams: Annotated[int, typer.Option("--streams", metavar="N")] = 1000,
+    packets: Annotated[int, typer.Option("--packets", metavar="N")] = 1_000_000,
+    as_json: AsJson = False,
+) -> None:
+    """Measure how fast this machine reads captures, beside other decoders."""
+    from linkwatch.commands.bench import print_bench, run_bench
+
+    typer.echo(print_bench(run_bench(streams, packets), as_json=as_json))
+
+
 def main() -> None:
     """Runs the command line; every error a person can put right is one line on stderr."""
     try:

@@ -13,8 +13,9 @@ import numpy as np
 
 from linkwatch.errors import CaptureError
 from linkwatch.frames import LinkType, Longs, Rows, gather
+from linkwatch.tap.walk import HEAD as PCAP_RECORD
+from linkwatch.tap.walk import LONGEST_FRAME, records
 
-LONGEST_FRAME = 256 << 10  # octets; no link carries frames so long, so a longer one is corrupt
 SECOND_NS = 1_000_000_000
 ALSO_RAW = {12, 14}  # values that some systems write for raw IP
 
@@ -97,7 +98,7 @@ def known_link_type(number: int, name: str) -> int:
 
 # -- pcap --------------------------------------------------------------------------------------
 
-PCAP_HEAD, PCAP_RECORD = 24, 16
+PCAP_HEAD = 24
 PCAP_UNITS = {0xA1B2C3D4: 1000, 0xA1B23C4D: 1}  # nanoseconds of the second time field's unit
 
 
@@ -117,19 +118,9 @@ class Pcap:
 
     def find(self, piece: bytes, place: int) -> Found:
         """See `Format`."""
-        captured_at = struct.Struct(f"{self.order}8xI").unpack_from
-        places: list[int] = []
-        found = places.append
-        last, end, fault = len(piece) - PCAP_RECORD, len(piece), ""
-        while place <= last:
-            following = place + PCAP_RECORD + captured_at(piece, place)[0]
-            if following > end:
-                if following - place > LONGEST_FRAME:
-                    fault = f"a frame of {following - place - PCAP_RECORD} octets"
-                break
-            found(place)
-            place = following
-        return Found(self._frames(piece, np.array(places, np.int64)), place, fault)
+        places, place, corrupt = records(piece, place, self.order)
+        fault = "no record's head" if corrupt else ""
+        return Found(self._frames(piece, places), place, fault)
 
     def _frames(self, piece: bytes, places: Longs) -> Frames:
         field_type = np.dtype(f"{self.order}u4")

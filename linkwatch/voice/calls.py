@@ -38,6 +38,7 @@ class Call:
         streams: Its streams by serial number: where an SSRC changed there are more than two.
         forward: Serial numbers of those that go from the first end to the second.
         carried: What each stream carried since the last report.
+        speaking: The stream that carries each direction now, or carried it last: forward, back.
         up: Whether any stream sends now.
     """
 
@@ -47,6 +48,7 @@ class Call:
     streams: dict[int, StreamState] = field(default_factory=dict)
     forward: set[int] = field(default_factory=set)
     carried: dict[int, Carried] = field(default_factory=dict)
+    speaking: tuple[StreamState | None, StreamState | None] = (None, None)
     up: bool = True
 
     @property
@@ -107,7 +109,8 @@ class CallBook:
             del call.carried[serial]
             call.streams[serial] = call.streams[serial]._replace(active=False)
         for call in list(self.live.values()):
-            call.up = any(stream.active for stream in call.streams.values())
+            call.speaking = _speaking(call)
+            call.up = any(stream is not None and stream.active for stream in call.speaking)
             if not call.carried:
                 self._end(call)
 
@@ -142,6 +145,18 @@ class CallBook:
         for stream in call.streams.values():
             if self._with_ssrc.get(stream.ssrc) is call:
                 del self._with_ssrc[stream.ssrc]
+
+
+def _speaking(call: Call) -> tuple[StreamState | None, StreamState | None]:
+    """Returns the latest stream of each direction."""
+    forward = back = None
+    for serial, stream in call.streams.items():
+        if serial in call.forward:
+            if forward is None or stream.last > forward.last:
+                forward = stream
+        elif back is None or stream.last > back.last:
+            back = stream
+    return forward, back
 
 
 def most_at_once(spans: Iterable[tuple[int, int]]) -> int:

@@ -6,7 +6,7 @@ from linkwatch.voice.figures import StreamState
 from linkwatch.voice.streams import address_text, end_text
 from linkwatch.watch.crossing import TO_SITE, Crossings
 from linkwatch.watch.judge import as_planned
-from linkwatch.watch.ledger import Ledger, speaking
+from linkwatch.watch.ledger import Ledger
 from linkwatch.watch.snapshot import CallState
 
 
@@ -20,8 +20,7 @@ def call_state(
     link = plan.links[first]
     # The stream in the forward direction goes away from the first end.
     here, there = call.ends if ways[first] != TO_SITE else call.ends[::-1]
-    both = [speaking(call, forward=True), speaking(call, forward=False)]
-    now = [stream for stream in both if stream]
+    now = [stream for stream in call.speaking if stream]
     jitters = [stream.jitter_ms for stream in now if stream.jitter_ms is not None]
     wrong = [s.dscp for s in now if link.call.dscp is not None and s.dscp != link.call.dscp]
     return CallState(

@@ -1,15 +1,16 @@
 """Which links a call crosses, and which way its streams go there."""
 
-from functools import lru_cache
 from ipaddress import IPv4Address, IPv6Address, ip_address
 
 from linkwatch.plan.model import Direction, LinkPlan, Plan
-from linkwatch.voice.calls import Call, End
+from linkwatch.voice.calls import Call
 from linkwatch.voice.streams import address_text
 
 TO_SITE: Direction = "to_site"
 FROM_SITE: Direction = "from_site"
 OTHER_WAY: dict[Direction, Direction] = {TO_SITE: FROM_SITE, FROM_SITE: TO_SITE}
+
+MOST_KNOWN = 65_536  # calls whose ways are remembered
 
 
 class Crossings:
@@ -17,6 +18,7 @@ class Crossings:
 
     def __init__(self, plan: Plan) -> None:
         self._links = plan.links
+        self._known: dict[int, tuple[Direction | None, ...]] = {}
 
     def first_link(self, source: str, destination: str) -> int:
         """Returns the index of the first link between two addresses; 0 where there is none."""
@@ -26,12 +28,14 @@ class Crossings:
 
     def of(self, call: Call) -> tuple[Direction | None, ...]:
         """Returns for each link which way the call's forward streams cross it, or None."""
-        return self._between(*call.ends)
-
-    @lru_cache(maxsize=65_536)  # noqa: B019 - one plan lives as long as its monitor
-    def _between(self, one: End, other: End) -> tuple[Direction | None, ...]:
-        ends = ip_address(address_text(one[0])), ip_address(address_text(other[0]))
-        return tuple(_direction(link, *ends) for link in self._links)
+        ways = self._known.get(call.id)
+        if ways is None:
+            if len(self._known) >= MOST_KNOWN:
+                self._known.clear()
+            one, other = (ip_address(address_text(address)) for address, _ in call.ends)
+            ways = tuple(_direction(link, one, other) for link in self._links)
+            self._known[call.id] = ways
+        return ways
 
 
 def _direction(

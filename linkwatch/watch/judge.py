@@ -14,7 +14,6 @@ from linkwatch.voice.calls import Call
 from linkwatch.voice.figures import StreamState
 from linkwatch.watch.alarms import Condition, Sign
 from linkwatch.watch.crossing import Crossings
-from linkwatch.watch.ledger import speaking
 from linkwatch.watch.snapshot import DirectionState, Kind, LinkState, Severity
 
 DUST_KBPS = 1e-6  # sums of many costs are not exact to the last bit
@@ -78,11 +77,8 @@ class Judge:
         for call in calls:
             if not call.up:
                 continue
-            crossed = [
-                link
-                for link, way in zip(self._plan.links, self._crossings.of(call), strict=True)
-                if way
-            ]
+            ways = self._crossings.of(call)
+            crossed = [link for link, way in zip(self._plan.links, ways, strict=True) if way]
             if crossed:
                 yield from self._of_planned(call, crossed[0])
             yield from _of_both_ways(call, crossed)
@@ -153,8 +149,7 @@ def as_planned(stream: StreamState, link: LinkPlan) -> bool:
 
 def _speaking(call: Call) -> list[StreamState]:
     """Returns the stream that speaks now in each direction."""
-    both = (speaking(call, forward=True), speaking(call, forward=False))
-    return [stream for stream in both if stream and stream.active]
+    return [stream for stream in call.speaking if stream and stream.active]
 
 
 def _of_both_ways(call: Call, crossed: list[LinkPlan]) -> Iterator[Condition]:

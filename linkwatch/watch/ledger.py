@@ -89,7 +89,8 @@ class Ledger:
         That is the planned cost of the codec and packetisation it uses. A direction that is not
         heard is counted like the other one: it may speak at any time.
         """
-        stream = speaking(call, forward) or speaking(call, not forward)
+        there, back = call.speaking
+        stream = (there or back) if forward else (back or there)
         if stream is None:
             return 0.0
         ipv6 = call.ends[0][0] >> 32 != IPV4_MAPPED
@@ -124,12 +125,6 @@ class Ledger:
         else:
             packets_per_second = (stream.packets - 1) / seconds if seconds else 0.0
         return float(octets * 8 * packets_per_second / 1000)
-
-
-def speaking(call: Call, forward: bool) -> StreamState | None:
-    """Returns the stream that carries one direction of a call now, or carried it last."""
-    way = [call.streams[s] for s in call.streams if (s in call.forward) == forward]
-    return max(way, key=lambda stream: stream.last, default=None)
 
 
 def _link_state(
