@@ -9,6 +9,7 @@ from linkwatch.board.screens.notices import Cautions, Help
 from linkwatch.board.widgets.alarms import Alarms
 from linkwatch.board.widgets.banner import Banner
 from linkwatch.board.widgets.calls import Calls
+from linkwatch.board.widgets.keyline import KeyLine
 from linkwatch.board.widgets.links import Links
 from linkwatch.board.widgets.masthead import Masthead
 from linkwatch.board.widgets.panebar import PaneBar
@@ -239,6 +240,19 @@ async def test_help_names_every_key_of_the_board(make, feed):
             assert binding.tooltip
             if len(binding.key) == 1:
                 assert f"\n{binding.key} " in f"\n{page}"
+
+
+async def test_the_way_out_is_named_at_any_width(make, feed):
+    """As space gets short other keys go from the last line before help and quit do."""
+    board = Board("tap eth1", feed)
+    async with board.run_test(size=(60, 16)) as pilot:
+        await show(pilot, feed, make.snapshot(links=(make.link(), make.link("quarry"))))
+        assert "a alarms" in words(board, KeyLine)
+        await pilot.resize_terminal(30, 16)
+        assert "a alarms" not in words(board, KeyLine)
+        assert words(board, KeyLine).endswith("? help  q quit")
+        await pilot.click(KeyLine, offset=(words(board, KeyLine).index("help"), 0))
+        assert isinstance(board.screen, Help)
 
 
 async def test_a_saved_screen_says_where(make, feed, tmp_path):

@@ -6,11 +6,11 @@ from textual.app import ComposeResult
 from textual.binding import Binding, BindingType
 from textual.geometry import Size
 from textual.screen import Screen
-from textual.widgets import Footer
 
 from linkwatch.board.callpage import call_lines
 from linkwatch.board.lines import Line, Piece, line
 from linkwatch.board.widgets.banner import Banner
+from linkwatch.board.widgets.keyline import KeyLine
 from linkwatch.board.widgets.masthead import Masthead
 from linkwatch.board.widgets.sheet import Sheet
 from linkwatch.watch.snapshot import CallState, Snapshot
@@ -52,7 +52,7 @@ class CallPage(Screen[None]):
         yield Masthead(self._title)
         yield Banner()
         yield CallSheet(self._call)
-        yield Footer(compact=True, show_command_palette=False)
+        yield KeyLine()
 
     def on_mount(self) -> None:
         """Shows the call as it stood when it was opened."""

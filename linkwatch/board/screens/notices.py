@@ -53,6 +53,7 @@ GLYPHS = (
     ("○ ●", "a place kept in reserve; the same, taken"),
     ("┃ ►", "the end of the budget; what is over it"),
     ("━ ═", "what the packets seen use; the same beyond the budget"),
+    ("█ ░ ▓", "in the trend: used, reserved, used beyond the budget"),
     ("!", "trouble: the state says which; or: not as planned"),
 )
 KEYS = (

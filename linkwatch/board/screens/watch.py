@@ -8,12 +8,13 @@ from textual.binding import Binding, BindingType
 from textual.containers import Horizontal, Vertical
 from textual.content import Content
 from textual.screen import Screen
-from textual.widgets import Footer, Static
+from textual.widgets import Static
 
 from linkwatch.board.text import safe
 from linkwatch.board.widgets.alarms import Alarms
 from linkwatch.board.widgets.banner import Banner
 from linkwatch.board.widgets.calls import Calls
+from linkwatch.board.widgets.keyline import KeyLine
 from linkwatch.board.widgets.links import Links
 from linkwatch.board.widgets.masthead import Masthead
 from linkwatch.board.widgets.panebar import PANES, PaneBar
@@ -56,7 +57,7 @@ class WatchScreen(Screen[None]):
                 yield Trend()
                 yield TapPane()
         yield Static("", id="ending")
-        yield Footer(compact=True, show_command_palette=False)
+        yield KeyLine()
 
     def on_mount(self) -> None:
         """Names the panes and begins with the calls."""
