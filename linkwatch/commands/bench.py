@@ -13,6 +13,7 @@ import tempfile
 import time
 from collections.abc import Callable
 from itertools import islice
+from multiprocessing import get_context
 from pathlib import Path
 from typing import NamedTuple
 
@@ -24,7 +25,8 @@ from linkwatch.plan.planfile import default_plan
 from linkwatch.run import read_capture
 
 ROUNDS = 3
-DPKT_PACKETS, SCAPY_PACKETS = 20_000, 1_500
+WARM_UP_PACKETS = 10
+MOST_PACKETS = {"read": sys.maxsize, "dpkt": 20_000, "scapy": 1_500}
 FRAME_OCTETS = 14 + 20 + 8 + 12 + 160
 RECORD_OCTETS = 16 + FRAME_OCTETS
 START_S = 1_800_000_000
@@ -55,7 +57,10 @@ class Bench(NamedTuple):
 
 def run_bench(streams: int, packets: int) -> Bench:
     """Measures everything, on a capture of so many streams and packets made for it."""
-    if not 1 <= streams <= 30_000 or not max(streams * 10, DPKT_PACKETS) <= packets <= 20_000_000:
+    if (
+        not 1 <= streams <= 30_000
+        or not max(streams * 10, MOST_PACKETS["dpkt"]) <= packets <= 20_000_000
+    ):
         raise InputError(
             "bench",
             got=f"{streams} streams of {packets} packets",
@@ -64,16 +69,10 @@ def run_bench(streams: int, packets: int) -> Bench:
     with tempfile.TemporaryDirectory() as folder:
         path = Path(folder) / "bench.pcap"
         write_capture(path, streams, packets)
-        decoders = {"dpkt": _with_dpkt, "scapy": _with_scapy}
-        times: dict[str, list[float]] = {"read": []}
-        missing = []
+        times: dict[str, list[float]] = {name: [] for name in DECODERS}
         for _ in range(ROUNDS):
-            times["read"].append(_timed(lambda: _read(path)))
-            for name, decode in decoders.items():
-                try:
-                    times.setdefault(name, []).append(_timed(lambda run=decode: run(path)))  # type: ignore[misc]
-                except ImportError:
-                    missing.append(name)
+            for name, of in times.items():
+                of += _in_its_own_process(name, path)
         others = {name: statistics.median(of) for name, of in times.items() if of}
         read_ns = others.pop("read")
         ratios = {
@@ -88,7 +87,7 @@ def run_bench(streams: int, packets: int) -> Bench:
             ratios,
             _help_s(),
             _read_mb(path),
-            tuple(dict.fromkeys(missing)),
+            tuple(name for name in DECODERS if not times[name]),
         )
 
 
@@ -155,41 +154,60 @@ def _seconds(streams: int, first: int, count: int) -> Octets:
     return rows
 
 
-def _timed(decode: Callable[[], int]) -> float:
-    """Returns nanoseconds a packet."""
-    begin = time.perf_counter()
-    packets = decode()
-    return (time.perf_counter() - begin) / packets * 1e9
+def _in_its_own_process(name: str, path: Path) -> list[float]:
+    """Returns nanoseconds a packet of one decoder, or nothing where it is not installed.
+
+    What one decoder leaves in memory would slow the next down.
+    """
+    with get_context("spawn").Pool(1) as pool:
+        return pool.apply(_timed, (name, path))
 
 
-def _read(path: Path) -> int:
+def _timed(name: str, path: Path) -> list[float]:
+    try:
+        DECODERS[name](path, WARM_UP_PACKETS)
+        begin = time.perf_counter()
+        packets = DECODERS[name](path, MOST_PACKETS[name])
+    except ImportError:
+        return []
+    return [(time.perf_counter() - begin) / packets * 1e9]
+
+
+def _read(path: Path, most: int) -> int:
+    """Reads the whole capture as `linkwatch read` does; with few packets it only warms up."""
+    if most < MOST_PACKETS["read"]:
+        default_plan()
+        return most
     return read_capture(path, default_plan(), on_snapshot=lambda _: None).packets
 
 
-def _with_dpkt(path: Path) -> int:
+def _with_dpkt(path: Path, most: int) -> int:
     """Decodes as far as RTP with dpkt, a plain loop."""
     import dpkt
 
     with path.open("rb") as file:
-        for _, frame in islice(dpkt.pcap.Reader(file), DPKT_PACKETS):
+        for _, frame in islice(dpkt.pcap.Reader(file), most):
             udp = dpkt.ethernet.Ethernet(frame).data.data
             rtp = dpkt.rtp.RTP(udp.data)
             _ = udp.sport, udp.dport, rtp.pt, rtp.seq, rtp.ts, rtp.ssrc
-    return DPKT_PACKETS
+    return most
 
 
-def _with_scapy(path: Path) -> int:
+def _with_scapy(path: Path, most: int) -> int:
     """Decodes as far as RTP with scapy, a plain loop."""
     from scapy.layers.inet import UDP
     from scapy.layers.l2 import Ether  # noqa: F401 - brings the decoder of Ethernet
     from scapy.layers.rtp import RTP
     from scapy.utils import PcapReader
 
-    for packet in islice(PcapReader(str(path)), SCAPY_PACKETS):
+    for packet in islice(PcapReader(str(path)), most):
         udp = packet[UDP]
         rtp = RTP(bytes(udp.payload))
         _ = udp.sport, udp.dport, rtp.payload_type, rtp.sequence, rtp.timestamp, rtp.sourcesync
-    return SCAPY_PACKETS
+    return most
+
+
+DECODERS = {"read": _read, "dpkt": _with_dpkt, "scapy": _with_scapy}
 
 
 def _help_s() -> float:

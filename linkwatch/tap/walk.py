@@ -66,14 +66,16 @@ def _many_walks(octets: Octets, place: int, order: str) -> tuple[Longs, int]:
     end = np.append(begin[1:], len(octets) - MARGIN)
     begin, end = begin[begin < end[-1]], end[begin < end[-1]]
     end = np.minimum(end, end[-1])
-    at, steps = begin.copy(), []
-    walking = np.arange(len(at))
+    walking, at, limit = np.arange(len(begin)), begin, end
+    ended, steps = begin.copy(), []
     while len(walking):
-        steps.append((walking, at[walking]))
-        captured = heads[at[walking] + CAPTURED].astype(np.int64)
-        at[walking] += np.where(captured <= LONGEST_FRAME, captured + HEAD, 2 * len(octets))
-        walking = walking[at[walking] < end[walking]]
-    proved = int(np.argmin(np.append(at[:-1] == begin[1:], False)))
+        steps.append((walking, at))
+        at = at + heads[at + CAPTURED] + HEAD
+        beyond = at >= limit
+        if beyond.any():
+            ended[walking[beyond]] = at[beyond]
+            walking, at, limit = walking[~beyond], at[~beyond], limit[~beyond]
+    proved = int(np.argmin(np.append(ended[:-1] == begin[1:], False)))
     walks = np.concatenate([walk for walk, _ in steps])
     places = np.concatenate([found for _, found in steps])
     right = walks < proved

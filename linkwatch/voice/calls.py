@@ -8,7 +8,6 @@ that share one at nearly the same time are one conversation.
 from collections import deque
 from collections.abc import Iterable, Iterator
 from dataclasses import dataclass, field
-from typing import NamedTuple
 
 from linkwatch.voice.figures import StreamState
 from linkwatch.voice.streams import SECOND_NS, SILENT_NS, StreamReport
@@ -18,13 +17,6 @@ End = tuple[int, int]
 MOVED_NS = 3 * SECOND_NS
 # Of one sender, and not of two that happen to use the same number (0 and 1 are popular).
 TELLING_SSRC = 0xFF
-
-
-class Carried(NamedTuple):
-    """What a stream of a call carried since the last report."""
-
-    link_octets: tuple[float, ...]
-    frame_octets: int
 
 
 @dataclass(slots=True)
@@ -37,7 +29,7 @@ class Call:
         conversation: The id of the first call of its conversation.
         streams: Its streams by serial number: where an SSRC changed there are more than two.
         forward: Serial numbers of those that go from the first end to the second.
-        carried: What each stream carried since the last report.
+        carried: The last report of each stream that has not ended: what it carried since.
         speaking: The stream that carries each direction now, or carried it last: forward, back.
         up: Whether any stream sends now.
     """
@@ -47,7 +39,7 @@ class Call:
     conversation: int
     streams: dict[int, StreamState] = field(default_factory=dict)
     forward: set[int] = field(default_factory=set)
-    carried: dict[int, Carried] = field(default_factory=dict)
+    carried: dict[int, StreamReport] = field(default_factory=dict)
     speaking: tuple[StreamState | None, StreamState | None] = (None, None)
     up: bool = True
 
@@ -102,7 +94,7 @@ class CallBook:
                     continue
                 call = self._joined(report)
             call.streams[report.serial] = report.state
-            call.carried[report.serial] = Carried(report.link_octets, report.frame_octets)
+            call.carried[report.serial] = report
             heard.add(report.serial)
         for serial in [serial for serial in self._of_stream if serial not in heard]:
             call = self._of_stream.pop(serial)

@@ -34,16 +34,21 @@ class Judge:
     def __init__(self, plan: Plan, crossings: Crossings) -> None:
         self._plan = plan
         self._crossings = crossings
+        self._near_ms = plan.alarms.jitter_ms * BACK_WITHIN
+        self._expected: dict[int, int] = {}
         self._lately: dict[int, deque[tuple[int, int]]] = {}
-        self._dropped = self._left_out = self._frames = 0
+        self._dropped = self._left_out = 0
+        self._heard = (0, 0)
         self._heard_at: int | None = None
 
     def of_tap(
         self, now: int, tap: TapStatistics, left_out: int, counters: CounterReading | None
     ) -> Iterator[Condition]:
         """Yields what keeps the tap from hearing everything, at `now` (nanoseconds)."""
-        if tap.frames > self._frames or self._heard_at is None:
-            self._heard_at = now
+        # Where the counters move but no frame comes, there is just no voice on the link.
+        heard = (tap.frames, counters.received + counters.sent if counters else 0)
+        if heard != self._heard or self._heard_at is None:
+            self._heard, self._heard_at = heard, now
         if tap.dropped > self._dropped:
             text = (
                 f"the kernel dropped {tap.dropped - self._dropped} frames before they were read: "
@@ -62,7 +67,7 @@ class Judge:
         if counters and not counters.up:
             text = "the tap's port is down or gone: check its cable and its switch port"
             yield Condition(Kind.LINK_DOWN, Severity.CRITICAL, "", "tap", text, at_once=True)
-        self._dropped, self._left_out, self._frames = tap.dropped, left_out, tap.frames
+        self._dropped, self._left_out = tap.dropped, left_out
 
     def of_links(self, links: Iterable[LinkState]) -> Iterator[Condition]:
         """Yields what is over a budget or near a capacity."""
@@ -73,56 +78,42 @@ class Judge:
 
     def of_calls(self, calls: Iterable[Call]) -> Iterator[Condition]:
         """Yields what is wrong with calls that are up."""
-        seen: dict[int, deque[tuple[int, int]]] = {}
-        for call in calls:
-            if not call.up:
-                continue
+        up = [call for call in calls if call.up]
+        self._remember(up)
+        for call in up:
             ways = self._crossings.of(call)
             crossed = [link for link, way in zip(self._plan.links, ways, strict=True) if way]
-            if crossed:
-                yield from self._of_planned(call, crossed[0])
-            yield from _of_both_ways(call, crossed)
+            now = [stream for stream in call.speaking if stream and stream.active]
+            if crossed and self._plan.given:
+                yield from _of_planned(call, now, crossed[0])
+            if len(now) == 1:
+                yield from _of_one_way(call, now[0], crossed)
             for serial in call.carried:
-                lately = self._lately.get(serial) or deque(maxlen=LATELY_LOOKS + 1)
-                lately.append((call.streams[serial].expected, call.streams[serial].lost))
-                seen[serial] = lately
-                yield from self._of_quality(call, crossed, call.streams[serial], lately)
-        self._lately = seen
+                if serial in self._lately or (call.streams[serial].jitter_ms or 0) > self._near_ms:
+                    yield from self._of_quality(call, crossed, serial)
 
-    def _of_planned(self, call: Call, link: LinkPlan) -> Iterator[Condition]:
-        """Yields what differs from the call that was planned for the link."""
-        if not self._plan.given:
-            return
-        planned = link.call
-        for stream in _speaking(call):
-            if not as_planned(stream, link):
-                seen = f"{stream.codec} {stream.packet_ms:g} ms" if stream.packet_ms else ""
-                text = (
-                    f"{seen or stream.codec} from {stream.source} where {planned.codec.name} "
-                    f"{planned.packet_ms:g} ms is planned: check the codec order of this phone "
-                    "or gateway"
-                )
-                yield _of_call(Kind.UNPLANNED_CODEC, Severity.MINOR, call, link.name, text)
-            if planned.dscp is not None and stream.dscp != planned.dscp:
-                text = (
-                    f"marked {marking_name(stream.dscp)} from {stream.source} where "
-                    f"{marking_name(planned.dscp)} is planned: the phone does not mark, or a "
-                    "switch port or router strips it"
-                )
-                yield _of_call(Kind.WRONG_MARKING, Severity.MINOR, call, link.name, text)
+    def _remember(self, up: list[Call]) -> None:
+        """Keeps what was expected and lost at the last looks, of the streams that ever lost."""
+        before, self._expected = self._expected, {}
+        lately, self._lately = self._lately, {}
+        for call in up:
+            for serial in call.carried:
+                stream = call.streams[serial]
+                self._expected[serial] = stream.expected
+                if stream.lost:
+                    looks = lately.get(serial)
+                    if looks is None:
+                        looks = deque([(before.get(serial, 0), 0)], LATELY_LOOKS + 1)
+                    looks.append((stream.expected, stream.lost))
+                    self._lately[serial] = looks
 
-    def _of_quality(
-        self,
-        call: Call,
-        crossed: list[LinkPlan],
-        stream: StreamState,
-        lately: deque[tuple[int, int]],
-    ) -> Iterator[Condition]:
-        limits = self._plan.alarms
+    def _of_quality(self, call: Call, crossed: list[LinkPlan], serial: int) -> Iterator[Condition]:
+        limits, stream = self._plan.alarms, call.streams[serial]
         link = crossed[0].name if crossed else ""
-        expected = lately[-1][0] - lately[0][0]
-        percent = 100 * max(0, lately[-1][1] - lately[0][1]) / expected if expected > 0 else 0.0
-        worst = percent / limits.loss_percent if limits.loss_percent else 0.0
+        looks = self._lately.get(serial, [(0, 0)])
+        expected, lost = looks[-1][0] - looks[0][0], looks[-1][1] - looks[0][1]
+        percent = 100 * max(0, lost) / expected if expected > 0 else 0.0
+        worst = percent / limits.loss_percent
         text = (
             f"{percent:.1f} % lost lately from {stream.source}: look for a full queue or a bad line"
         )
@@ -147,17 +138,30 @@ def as_planned(stream: StreamState, link: LinkPlan) -> bool:
     return stream.codec == planned.codec.name and stream.packet_ms in (None, planned.packet_ms)
 
 
-def _speaking(call: Call) -> list[StreamState]:
-    """Returns the stream that speaks now in each direction."""
-    return [stream for stream in call.speaking if stream and stream.active]
+def _of_planned(call: Call, now: list[StreamState], link: LinkPlan) -> Iterator[Condition]:
+    """Yields what differs from the call that was planned for the link."""
+    planned = link.call
+    for stream in now:
+        if not as_planned(stream, link):
+            seen = f"{stream.codec} {stream.packet_ms:g} ms" if stream.packet_ms else stream.codec
+            text = (
+                f"{seen} from {stream.source} where {planned.codec.name} {planned.packet_ms:g} ms "
+                "is planned: check the codec order of this phone or gateway"
+            )
+            yield _of_call(Kind.UNPLANNED_CODEC, Severity.MINOR, call, link.name, text)
+        if planned.dscp is not None and stream.dscp != planned.dscp:
+            text = (
+                f"marked {marking_name(stream.dscp)} from {stream.source} where "
+                f"{marking_name(planned.dscp)} is planned: the phone does not mark, or a switch "
+                "port or router strips it"
+            )
+            yield _of_call(Kind.WRONG_MARKING, Severity.MINOR, call, link.name, text)
 
 
-def _of_both_ways(call: Call, crossed: list[LinkPlan]) -> Iterator[Condition]:
-    quiet_is_normal = any(link.call.silence_suppression for link in crossed)
-    sending = _speaking(call)
-    if len(sending) != 1 or (call.both_ways and quiet_is_normal):
+def _of_one_way(call: Call, only: StreamState, crossed: list[LinkPlan]) -> Iterator[Condition]:
+    """Yields a call of which one direction alone sends, where its silence is not planned."""
+    if call.both_ways and any(link.call.silence_suppression for link in crossed):
         return
-    only = sending[0]
     text = (
         f"audio only from {only.source} to {only.destination}: look for a firewall, an address "
         "translation or a wrong media address on the way back"
