@@ -21,6 +21,7 @@ from linkwatch.tap.records import LONGEST_BLOCK, Frames, Pcapng, format_of
 
 PIECE = 4 << 20  # octets read at once: they stay in the processor's cache until they are used
 HEAD = 24  # octets that tell the format
+SLACK = 64  # octets behind a piece that a head may be gathered into
 GZIP_MAGIC = b"\x1f\x8b"
 STANDARD_INPUT = "-"
 
@@ -39,19 +40,28 @@ class CaptureFile:
         self._name = "standard input" if str(path) == STANDARD_INPUT else str(path)
         self._file, self._size = _open(path, self._name)
         self._unpacked: gzip.GzipFile | BufferedReader = self._file
+        # One buffer for all pieces: fresh memory for each would cost as much as the reading.
+        self._buffer = bytearray(PIECE + SLACK)
+        self._filled = 0
         self._frames = self._octets = 0
         self._until = 0
         self._remarks: list[str] = []
         self._closed = False
         if self._file.peek(2)[:2] == GZIP_MAGIC:
             self._unpacked = gzip.GzipFile(fileobj=self._file)
-        head = self._more(HEAD)
+        head = self._head()
         try:
             self._format, self._records_at = format_of(head, self._name)
         except CaptureError:
             self.close()
             raise
-        self._held = head[self._records_at :]
+        self._keep(self._records_at)
+
+    def _head(self) -> bytes:
+        """Reads as far as it takes to tell the format."""
+        while self._filled < HEAD and self._fill():
+            pass
+        return bytes(memoryview(self._buffer)[: min(HEAD, self._filled)])
 
     @property
     def name(self) -> str:
@@ -67,22 +77,22 @@ class CaptureFile:
 
     def batches(self) -> Iterator[FrameBatch]:
         """Yields the frames in the order of the file, a few MB at a time."""
-        piece, begins = self._held, self._records_at
+        begins = self._records_at
         while not self._closed:
-            more = self._more(PIECE)
-            piece += more
-            place = 0
+            more = self._fill()
+            place, piece = 0, memoryview(self._buffer)[: self._filled]
             while True:
                 found = self._format.find(piece, place)
-                yield from self._batches(piece, found.frames)
+                yield from self._batches(found.frames)
                 if found.fault or found.used == place:
                     break
                 place = found.used
-            place = found.used
-            if found.fault or not more or len(piece) - place > LONGEST_BLOCK + PIECE:
-                self._conclude(begins + place, found.fault, len(piece) - place)
+            place, rest = found.used, self._filled - found.used
+            if found.fault or not more or rest > LONGEST_BLOCK:
+                self._conclude(begins + place, found.fault, rest)
                 return
-            piece, begins = piece[place:], begins + place
+            begins += place
+            self._keep(place)
 
     def counters(self) -> CounterReading | None:
         """Returns None: a capture knows nothing of interface counters."""
@@ -97,22 +107,39 @@ class CaptureFile:
         self._closed = True
         self._file.close()
 
-    def _more(self, octets: int) -> bytes:
-        """Reads on; where the file cannot be read on, that is the end, with a remark."""
-        got = b""
+    def _fill(self) -> bool:
+        """Reads on into the buffer; a pipe only as far as there is something.
+
+        Returns whether anything came. Where the file cannot be read on, that is its end, with a
+        remark.
+        """
+        room = memoryview(self._buffer)[: len(self._buffer) - SLACK]
+        before = self._filled
         try:
-            while len(got) < octets and (more := self._unpacked.read(octets - len(got))):
-                got += more
+            while self._filled < len(room):
+                got = self._unpacked.readinto1(room[self._filled :])
+                self._filled += got
+                if not got or not self._size:
+                    break
         except (OSError, EOFError, zlib.error, ValueError) as error:
             if not self._closed:
                 self._remarks.append(f"{self._name} cannot be read to its end: {error}")
-        return got
+            return False
+        return self._filled > before
 
-    def _batches(self, piece: bytes, frames: Frames) -> Iterator[FrameBatch]:
+    def _keep(self, place: int) -> None:
+        """Moves what is not used yet to the front, into a larger buffer where it fills this one."""
+        rest = bytes(memoryview(self._buffer)[place : self._filled])
+        if len(rest) + SLACK >= len(self._buffer):
+            self._buffer = bytearray(2 * len(self._buffer))
+        self._buffer[: len(rest)] = rest
+        self._filled = len(rest)
+
+    def _batches(self, frames: Frames) -> Iterator[FrameBatch]:
         """Yields what was found as batches of one link type each."""
         if not len(frames.at):
             return
-        octets = np.frombuffer(piece, np.uint8)
+        octets = np.frombuffer(self._buffer, np.uint8)
         changes = np.flatnonzero(np.diff(frames.link_type)) + 1
         for start, stop in zip((0, *changes), (*changes, len(frames.at)), strict=True):
             part = slice(start, stop)

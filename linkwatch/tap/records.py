@@ -7,12 +7,12 @@ Capture File Format".
 
 import struct
 from dataclasses import dataclass
-from typing import NamedTuple, Protocol
+from typing import NamedTuple, Protocol, cast
 
 import numpy as np
 
 from linkwatch.errors import CaptureError
-from linkwatch.frames import LinkType, Longs, Rows, gather
+from linkwatch.frames import LinkType, Longs, Octets, Rows, gather
 from linkwatch.tap.walk import HEAD as PCAP_RECORD
 from linkwatch.tap.walk import LONGEST_FRAME, records
 
@@ -54,8 +54,8 @@ class Found(NamedTuple):
 class Format(Protocol):
     """A capture format, with what it has learned of the file so far."""
 
-    def find(self, piece: bytes, place: int) -> Found:
-        """Returns the frames from a place in a piece on.
+    def find(self, piece: memoryview, place: int) -> Found:
+        """Returns the frames from a place in a piece on; a little room follows the piece.
 
         There may be more behind them: to be asked again from where they end, until it uses none.
         """
@@ -80,6 +80,11 @@ def format_of(head: bytes, name: str) -> tuple[Format, int]:
     raise CaptureError(
         name, got=f"a file that begins with {head[:4].hex(' ')}", wanted="a pcap or pcapng capture"
     )
+
+
+def _with_room(piece: memoryview) -> Octets:
+    """Returns the whole buffer that a piece begins, with the room that follows it."""
+    return np.frombuffer(cast("bytearray", piece.obj), np.uint8)
 
 
 def known_link_type(number: int, name: str) -> int:
@@ -116,16 +121,16 @@ class Pcap:
     unit_ns: int
     link_type: int
 
-    def find(self, piece: bytes, place: int) -> Found:
+    def find(self, piece: memoryview, place: int) -> Found:
         """See `Format`."""
         places, place, corrupt = records(piece, place, self.order)
         fault = "no record's head" if corrupt else ""
         return Found(self._frames(piece, places), place, fault)
 
-    def _frames(self, piece: bytes, places: Longs) -> Frames:
+    def _frames(self, piece: memoryview, places: Longs) -> Frames:
         field_type = np.dtype(f"{self.order}u4")
         layout = np.dtype([(name, field_type) for name in ("sec", "unit", "captured", "original")])
-        head = gather(np.frombuffer(piece, np.uint8), places, layout)
+        head = gather(_with_room(piece), places, layout)
         times = head["sec"].astype(np.int64) * SECOND_NS
         times += head["unit"].astype(np.int64) * self.unit_ns
         return Frames(
@@ -193,34 +198,39 @@ class Pcapng:
         self._last_time = 0
         self.left_out = 0
 
-    def find(self, piece: bytes, place: int) -> Found:
+    def find(self, piece: memoryview, place: int) -> Found:
         """See `Format`; a section or an interface changes what follows means, and ends a find."""
         places: list[int] = []
         fault = ""
+        order = self._order_at(piece, place)
+        block_at = struct.Struct(f"{order}II").unpack_from
         while place + BLOCK_LEAST <= len(piece):
-            order = self._order_at(piece, place)
-            kind, length = struct.unpack_from(order + "II", piece, place)
+            kind, length = block_at(piece, place)
+            if kind == SECTION and places:
+                break
             if not order or length < BLOCK_LEAST or length % 4 or length > LONGEST_BLOCK:
-                fault = f"a block of {length} octets"
+                fault = "no block's head"
                 break
             if place + length > len(piece):
                 break
-            if kind in (SECTION, INTERFACE):
+            if kind == PACKET or kind in (OLD_PACKET, SIMPLE_PACKET):
+                places.append(place)
+            elif kind in (SECTION, INTERFACE):
                 if places:
                     break
-                fault = self._learn(kind, order, piece[place : place + length])
+                fault = self._learn(kind, order, bytes(piece[place : place + length]))
                 if fault:
                     break
-            elif kind in (PACKET, OLD_PACKET, SIMPLE_PACKET):
-                places.append(place)
+                order = self._order
+                block_at = struct.Struct(f"{order}II").unpack_from
             place += length
         return Found(self._frames(piece, np.array(places, np.int64)), place, fault)
 
-    def _order_at(self, piece: bytes, place: int) -> str:
+    def _order_at(self, piece: memoryview, place: int) -> str:
         """Returns the byte order of the block there; a section head tells a new one."""
         if piece[place : place + 4] != SECTION_MAGIC:
             return self._order
-        return {LITTLE: "<", BIG: ">"}.get(piece[place + 8 : place + 12], "")
+        return {LITTLE: "<", BIG: ">"}.get(bytes(piece[place + 8 : place + 12]), "")
 
     def _learn(self, kind: int, order: str, block: bytes) -> str:
         """Takes in a section or an interface; returns what is wrong with it."""
@@ -243,11 +253,11 @@ class Pcapng:
         self._interfaces.append(Interface(link_type, snaplen, unit, 0 if far else offset_s))
         return ""
 
-    def _frames(self, piece: bytes, places: Longs) -> Frames:
+    def _frames(self, piece: memoryview, places: Longs) -> Frames:
         four = np.dtype(f"{self._order}u4")
         names = ("kind", "length", "interface", "high", "low", "captured", "original")
         # A simple packet's block may be shorter than the head of the others.
-        octets = np.frombuffer(piece + bytes(PACKET_HEAD), np.uint8)
+        octets = _with_room(piece)
         head = gather(octets, places, np.dtype([(n, four) for n in names]))
         simple = head["kind"] == SIMPLE_PACKET
         interface = head["interface"].astype(np.int64)

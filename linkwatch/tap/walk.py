@@ -23,7 +23,7 @@ LEAST = WALKS * SEARCH * 2  # octets below which one walk is as good
 ALIKE = 3  # heads in a row that must look like heads
 
 
-def records(piece: bytes, place: int, order: str) -> tuple[Longs, int, bool]:
+def records(piece: memoryview, place: int, order: str) -> tuple[Longs, int, bool]:
     """Returns where the whole records of a piece begin from `place` on, and where they end.
 
     Args:
@@ -43,7 +43,7 @@ def records(piece: bytes, place: int, order: str) -> tuple[Longs, int, bool]:
     return np.concatenate([*found, rest]), place, corrupt
 
 
-def _one_walk(piece: bytes, place: int, order: str) -> tuple[Longs, int, bool]:
+def _one_walk(piece: memoryview, place: int, order: str) -> tuple[Longs, int, bool]:
     captured_at = struct.Struct(f"{order}{CAPTURED}xI").unpack_from
     places: list[int] = []
     last, end = len(piece) - HEAD, len(piece)
@@ -107,4 +107,4 @@ def _guesses(
         alike &= heads[following] >> 16 == seconds
     at, walk = at[alike], walk[alike]
     _, first = np.unique(walk, return_index=True)
-    return at[first]
+    return np.unique(np.append(place, at[first]))
