@@ -74,19 +74,18 @@ class Lanes:
         time: Longs,
         payload_octets: Longs,
     ) -> None:
-        """Takes in packets, each once, in the order of their arrival for each source.
+        """Takes in packets, each once, sorted by source, each source's as they arrived.
 
         Columns of one length; `segment` counts how often the source's numbering began again.
         """
         lane = self._lanes_of(source, payload_type)
         if not lane.all():
             lane = self._begin(source, payload_type, timestamp, time)
-        order = grouping(lane)
-        if not lane.all():
-            order = order[np.count_nonzero(lane == 0) :]
-        if not len(order):
+        order = _order(lane)
+        lane = lane[order]
+        if not len(lane):
             return
-        groups = Groups.of(lane[order])
+        groups = Groups.of(lane)
         self._measure(groups, segment[order], sequence[order], timestamp[order], time[order])
         self._lane["packets"][groups.owner] += groups.size
         self._lane["payload_octets"][groups.owner] += groups.total(payload_octets[order])
@@ -212,3 +211,14 @@ class Lanes:
         self._lane[lanes] = np.zeros((), LANE)
         self._steps[lanes] = 0
         self._free.extend(int(lane) for lane in lanes[::-1])
+
+
+def _order(lane: Longs) -> Longs | slice:
+    """Returns the order that sorts packets by lane and leaves out those without one.
+
+    Packets come sorted by source, so where every source has one lane they are sorted already.
+    """
+    runs = Groups.of(lane).owner if len(lane) else lane
+    if len(runs) == len(set(runs.tolist())) and 0 not in runs:
+        return slice(None)
+    return grouping(lane)[np.count_nonzero(lane == 0) :]

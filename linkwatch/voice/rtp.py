@@ -34,7 +34,8 @@ class RtpPackets:
 
     Attributes:
         key: Source high and low, destination high and low, ports and SSRC: five words that name
-            a source (see `Datagrams.ends`; the last is ports * 2**32 + SSRC).
+            a source (see `Datagrams.ends`; the last is ports * 2**32 + SSRC). Empty where the
+            packets have been chosen from others: whoever chooses knows their sources.
         payload_type: 0 to 127.
         sequence: 0 to 65535.
         timestamp: 0 to 2**32 - 1.
@@ -44,7 +45,7 @@ class RtpPackets:
         frame_octets: Octets of the frame as it was on the tap.
     """
 
-    key: tuple[Words, Words, Words, Words, Words]
+    key: tuple[Words, ...]
     payload_type: npt.NDArray[np.uint8]
     sequence: Longs
     timestamp: Longs
@@ -60,9 +61,8 @@ class RtpPackets:
 
     def chosen(self, which: Longs | Mask) -> "RtpPackets":
         """Returns the packets with these indexes (in that order) or for which this is true."""
-        a, b, c, d, e = (word[which] for word in self.key)
         return RtpPackets(
-            (a, b, c, d, e),
+            (),
             self.payload_type[which],
             self.sequence[which],
             self.timestamp[which],
