@@ -379,7 +379,7 @@ class StreamTable:
             kbps.tolist(),
             (now - source["last"] <= SILENT_NS).tolist(),
         )
-        return [StreamState(*values) for values in zip(*columns, strict=True)]
+        return list(map(StreamState._make, zip(*columns, strict=True)))
 
 
 class _Names(NamedTuple):

@@ -68,6 +68,7 @@ class Monitor:
             kept,
         )
         self._tick: int | None = None  # the next one
+        self._unfinished = False  # whether frames were heard since the last tick
         self._counters: CounterReading | None = None
         self._load: Load | None = None
         self._tap = TapStatistics()
@@ -92,19 +93,21 @@ class Monitor:
                 self._listener.hear(batch.part(done, upto, self._tick))
                 done = upto
             yield self._conclude(self._tick, counters)
+            self._unfinished = False
             self._tick += self._every
             following = int(times[done]) if done < len(times) else batch.until
             if following - self._tick > SILENCE_NS:
                 self._tick = max(self._tick, self._aligned(following) - SILENCE_NS // 2)
         if done < len(batch):
             self._listener.hear(batch.part(done, len(batch), batch.until))
+            self._unfinished = True
 
     def finish(self, tap: TapStatistics) -> Iterator[Snapshot]:
-        """Yields the last snapshot, at the next whole tick after the last frame."""
+        """Yields a last snapshot for frames after the last tick, at the next whole one."""
         self._tap = tap
-        if self._tick is not None:
+        if self._tick is not None and self._unfinished:
             yield self._conclude(self._tick, self._counters)
-            self._tick += self._every
+            self._unfinished = False
 
     def _begin(self, first: int, until: int) -> None:
         """Sets the first tick, or sets it again where the clock was set back."""
