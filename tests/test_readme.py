@@ -25,6 +25,7 @@ def test_every_file_it_names_is_there():
 
 def test_every_command_it_names_has_help():
     """Whatever the README calls answers `--help`."""
-    for command in set(re.findall(r"linkwatch (watch|demo|read|log|count|cost|plan|taps|bench)", README)):
+    commands = "watch|demo|read|log|count|cost|plan|taps|bench"
+    for command in set(re.findall(f"linkwatch ({commands})", README)):
         asked = [sys.executable, "-m", "linkwatch", command, "--help"]
         assert subprocess.run(asked, capture_output=True, check=True).stdout

@@ -73,7 +73,7 @@ class PacketRing:
         self._counters = InterfaceCounters(name)
         self._frames = self._octets = self._dropped = self._oversize = 0
         self._remarks: dict[str, None] = {}  # in order, each once
-        self._closed = False
+        self._closed = self._reading = False
         self._until = 0
         self._open()
 
@@ -98,6 +98,7 @@ class PacketRing:
             tap.close()
             raise
         self._socket = tap
+        self._block = 0  # the one to be handed over next
         self._words = memoryview(memory).cast("I")
         self._memory = np.frombuffer(memory, np.uint8)
 
@@ -110,14 +111,14 @@ class PacketRing:
         """Yields a batch for each block; without any, a silence several times a second."""
         ready = select.poll()
         ready.register(self._socket, select.POLLIN | select.POLLERR)
-        block = 0
+        self._reading = True
         try:
             while not self._closed:
-                head = block * BLOCK_OCTETS // 4
+                head = self._block * BLOCK_OCTETS // 4
                 if self._words[head + STATUS] & OURS:
-                    yield self._batch(block)
+                    yield self._batch(self._block)
                     self._words[head + STATUS] = KERNELS
-                    block = (block + 1) % BLOCKS
+                    self._block = (self._block + 1) % BLOCKS
                     continue
                 for _, event in ready.poll(WAIT_MS):
                     if event & select.POLLERR:
@@ -127,7 +128,9 @@ class PacketRing:
                     self._until = max(self._until, time.time_ns() - NOT_YET_NS)
                     yield silence(self._link_type, self._until)
         finally:
-            self._socket.close()
+            self._reading = False
+            if self._closed:
+                self._socket.close()
 
     def _batch(self, block: int) -> FrameBatch:
         """Returns a block's frames, in the memory in which the kernel wrote them."""
@@ -194,8 +197,10 @@ class PacketRing:
         )
 
     def close(self) -> None:
-        """Ends `batches` within a moment."""
+        """Ends `batches` within a moment; whoever reads them still closes the socket."""
         self._closed = True
+        if not self._reading:
+            self._socket.close()
 
 
 def _facts(tap: socket.socket, name: str) -> tuple[int, int]:

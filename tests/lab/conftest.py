@@ -1,7 +1,6 @@
 """Two network namespaces joined by a wire, for real traffic that reaches nobody else."""
 
 import os
-import shutil
 import subprocess
 import sys
 from ipaddress import ip_address
@@ -100,22 +99,9 @@ class Recording:
         return lengths
 
 
-def why_not():
-    if not sys.platform.startswith("linux"):
-        return "needs another operating system: Linux"
-    if os.geteuid() != 0:
-        return "needs root for network namespaces"
-    if not shutil.which("ip") or not shutil.which("tc"):
-        return "needs ip and tc (iproute2)"
-    return None
-
-
 @pytest.fixture
-def wire():
+def wire(lab):
     """Two namespaces joined by a wire; everything on it ends with the test."""
-    reason = why_not()
-    if reason:
-        pytest.skip(reason)
     made = Wire()
     try:
         made.set_up()

@@ -78,7 +78,7 @@ def test_any_words_make_a_framing_or_one_clear_error(text):
     try:
         parse_framing(text)
     except LayerError as error:
-        assert "\n" not in str(error)  # noqa: PT017 - either outcome is right
+        assert "\n" not in str(error)
 
 
 def test_equal_framings_are_one_key():

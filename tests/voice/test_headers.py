@@ -19,7 +19,7 @@ with warnings.catch_warnings():
     from scapy.contrib.mpls import MPLS
     from scapy.layers.inet import IP, UDP, fragment
     from scapy.layers.inet6 import IPv6, IPv6ExtHdrDestOpt, IPv6ExtHdrHopByHop
-    from scapy.layers.l2 import Dot1AD, Dot1Q, Ether, CookedLinux
+    from scapy.layers.l2 import CookedLinux, Dot1AD, Dot1Q, Ether
     from scapy.layers.ppp import PPP, PPPoE
     from scapy.packet import Raw
 

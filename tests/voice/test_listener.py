@@ -1,5 +1,7 @@
 """From frames to streams and calls: the voice floor by its one door."""
 
+import itertools
+
 import numpy as np
 import pytest
 import rfc3550
@@ -18,7 +20,7 @@ def heard(frames, *, payload_types=None, cuts=(), conclude_s=0.0, snaplen=65535)
     """Returns a listener that has heard these frames, in batches that end before the cuts."""
     listener = Listener(payload_types or {}, [ETHERNET])
     edges = [0, *sorted(cuts), len(frames)]
-    for start, stop in zip(edges, edges[1:], strict=False):
+    for start, stop in itertools.pairwise(edges):
         if stop > start:
             listener.hear(batch(frames[start:stop], LinkType.ETHERNET, snaplen))
     listener.conclude(frames[-1][0] + round(conclude_s * 1e9))

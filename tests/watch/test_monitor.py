@@ -1,5 +1,7 @@
 """The monitor: batches in, snapshots out; ledger, judge and alarms together."""
 
+import itertools
+
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
@@ -36,7 +38,7 @@ def watched(frames, plan=None, *, cuts=(), readings=None, tap=None, quiet_s=0, *
     monitor = Monitor(plan or planned(), "test", keep_all=True, **options)
     snapshots = []
     edges = [0, *sorted(cuts), len(frames)]
-    for start, stop in zip(edges, edges[1:], strict=False):
+    for start, stop in itertools.pairwise(edges):
         if stop > start:
             piece = batch(frames[start:stop])
             snapshots += monitor.feed(piece, tap or TapStatistics(), None)
