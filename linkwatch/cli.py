@@ -253,7 +253,8 @@ def main() -> None:
         print(f"linkwatch: {error}", file=sys.stderr)
         status = error.exit_status
     except WRONG_USAGE as error:
-        print(f"linkwatch: {one_line(str(error))} See `linkwatch --help`.", file=sys.stderr)
+        said = getattr(error, "format_message", error.__str__)()
+        print(f"linkwatch: {one_line(said)} See `linkwatch --help`.", file=sys.stderr)
         status = 2
     except (KeyboardInterrupt, typer.Abort):
         status = 130

@@ -3,6 +3,7 @@
 from collections.abc import Sequence
 from datetime import datetime
 
+from linkwatch.errors import one_line
 from linkwatch.plan.marking import marking_name
 from linkwatch.watch.snapshot import Alarm, CallState, DirectionState, LinkState, Snapshot
 
@@ -62,8 +63,9 @@ def reading_text(
 ) -> str:
     """Returns what a capture held: its calls, its alarms and what the figures do not cover."""
     conversations = len({call.conversation for call in calls})
-    held = f"{_calls(len(calls))} in {conversations} conversations, {most[0]} at once at most"
-    lines = [f"{name}: {packets} frames, {held}"]
+    in_all = "1 conversation" if conversations == 1 else f"{conversations} conversations"
+    held = f"{_calls(len(calls))} in {in_all}, {most[0]} at once at most"
+    lines = [f"{one_line(name)}: {packets} frames, {held}"]
     if last:
         lines += [f"  {_framed(link)}" for link in last.links]
         if not all(link.directions_known for link in last.links):
@@ -72,7 +74,7 @@ def reading_text(
         lines += ["", _HEAD, *(_call(call) for call in calls)]
     if alarms:
         lines += ["", "alarms", *(_alarm(alarm) for alarm in alarms)]
-    lines += [f"note: {remark}" for remark in remarks]
+    lines += [f"note: {one_line(remark)}" for remark in remarks]
     return "\n".join(lines)
 
 
