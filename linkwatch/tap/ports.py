@@ -45,7 +45,8 @@ def remedy() -> str:
     interpreter = Path(sys.executable)
     return (
         "Start it with sudo (root is given up once the port is open), or give the right to an "
-        f"interpreter of its own: sudo setcap cap_net_raw,cap_net_admin+ep {interpreter}"
+        "interpreter of its own (of an environment made with `python3 -m venv --copies`): "
+        f"sudo setcap cap_net_raw+ep {interpreter}"
     )
 
 

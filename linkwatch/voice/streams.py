@@ -10,7 +10,6 @@ for all sources at once; the rest goes through `sequence`, a packet at a time.
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-from ipaddress import IPv6Address
 from typing import NamedTuple
 
 import numpy as np
@@ -21,6 +20,7 @@ from linkwatch.voice.figures import StreamState
 from linkwatch.voice.groups import Groups, grouping
 from linkwatch.voice.index import KeyIndex
 from linkwatch.voice.lanes import Lanes
+from linkwatch.voice.names import Names, names_of
 from linkwatch.voice.recognise import Recogniser
 from linkwatch.voice.rtp import Probation, RtpPackets
 from linkwatch.voice.sequence import (
@@ -125,7 +125,7 @@ class StreamTable:
         self._link_octets = np.zeros((MOST_SOURCES, len(framings)))
         self._new_link_octets = np.zeros((MOST_SOURCES, len(framings)))
         self._probation: dict[int, Probation] = {}
-        self._names: dict[int, _Names] = {}
+        self._names: dict[int, Names] = {}
         self._free = list(range(MOST_SOURCES - 1, -1, -1))
         self._last_serial = self._peak = self._left_out = self._ended_packets = 0
 
@@ -314,9 +314,9 @@ class StreamTable:
         self._last_serial += 1
         self._source["state"][row] = ACCEPTED
         self._source["serial"][row] = self._last_serial
-        self._names[row] = _names(self._index.key(row), self._framing_of)
+        self._names[row] = names_of(self._index.key(row), self._framing_of)
 
-    def _states(self, rows: Longs, names: "list[_Names]", now: int) -> list[StreamState]:
+    def _states(self, rows: Longs, names: list[Names], now: int) -> list[StreamState]:
         source = self._source[rows]
         lanes = self._lanes.main(MOST_SOURCES)[rows]
         lane = self._lanes.figures(lanes)
@@ -380,39 +380,3 @@ class StreamTable:
             (now - source["last"] <= SILENT_NS).tolist(),
         )
         return list(map(StreamState._make, zip(*columns, strict=True)))
-
-
-class _Names(NamedTuple):
-    """What never changes of a stream: its ends in words and numbers, its SSRC, its framing."""
-
-    source: str
-    destination: str
-    ends: tuple[tuple[int, int], tuple[int, int]]
-    ssrc: int
-    framing: int
-
-
-def _names(key: tuple[int, ...], framing_of: Callable[[str, str], int]) -> _Names:
-    source_high, source_low, destination_high, destination_low, ports_ssrc = key
-    source = source_high << 64 | source_low
-    destination = destination_high << 64 | destination_low
-    source_port, destination_port = ports_ssrc >> 48, ports_ssrc >> 32 & 0xFFFF
-    here, there = address_text(source), address_text(destination)
-    return _Names(
-        end_text(here, source_port),
-        end_text(there, destination_port),
-        ((source, source_port), (destination, destination_port)),
-        ports_ssrc & 0xFFFF_FFFF,
-        framing_of(here, there),
-    )
-
-
-def address_text(number: int) -> str:
-    """Returns an address as people write it; IPv4 comes as ::ffff:a.b.c.d."""
-    address = IPv6Address(number)
-    return str(address.ipv4_mapped or address)
-
-
-def end_text(address: str, port: int) -> str:
-    """Returns an address and a port as people write them."""
-    return f"[{address}]:{port}" if ":" in address else f"{address}:{port}"

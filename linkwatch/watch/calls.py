@@ -3,7 +3,7 @@
 from linkwatch.plan.planfile import Plan
 from linkwatch.voice.calls import Call
 from linkwatch.voice.figures import StreamState
-from linkwatch.voice.streams import address_text, end_text
+from linkwatch.voice.names import address_text, end_text
 from linkwatch.watch.crossing import TO_SITE, Crossings
 from linkwatch.watch.judge import as_planned
 from linkwatch.watch.ledger import Ledger

@@ -4,7 +4,7 @@ from ipaddress import IPv4Address, IPv6Address, ip_address
 
 from linkwatch.plan.model import Direction, LinkPlan, Plan
 from linkwatch.voice.calls import Call
-from linkwatch.voice.streams import address_text
+from linkwatch.voice.names import address_text
 
 TO_SITE: Direction = "to_site"
 FROM_SITE: Direction = "from_site"
