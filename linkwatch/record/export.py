@@ -43,6 +43,10 @@ def snapshot_json(snapshot: Snapshot) -> Json:
         "links": [_link_json(link) for link in snapshot.links],
         "calls_up": snapshot.calls_up,
         "elsewhere_up": snapshot.elsewhere_up,
+        "codecs": [
+            {"codec": used.codec, "packet_ms": used.packet_ms, "calls": used.calls}
+            for used in snapshot.codecs
+        ],
         "alarms": [alarm_json(alarm) for alarm in snapshot.alarms],
     }
 

@@ -113,13 +113,17 @@ class PacketRing:
         ready.register(self._socket, select.POLLIN | select.POLLERR)
         self._reading = True
         try:
-            while not self._closed:
+            left = BLOCKS  # to be read after the end is asked for, of those that are ready then
+            while left:
+                left -= self._closed
                 head = self._block * BLOCK_OCTETS // 4
                 if self._words[head + STATUS] & OURS:
                     yield self._batch(self._block)
                     self._words[head + STATUS] = KERNELS
                     self._block = (self._block + 1) % BLOCKS
                     continue
+                if self._closed:
+                    break
                 for _, event in ready.poll(WAIT_MS):
                     if event & select.POLLERR:
                         self._complain()

@@ -32,9 +32,9 @@ def call_state(
         there=end_text(address_text(there[0]), there[1]),
         both_ways=call.both_ways,
         crosses=tuple(plan.links[index].name for index in crossed),
-        codec="/".join(dict.fromkeys(stream.codec for stream in now)),
+        codec=codec_of(call),
         as_planned=not crossed or not plan.given or all(as_planned(s, link) for s in now),
-        packet_ms=now[0].packet_ms,
+        packet_ms=packet_ms_of(call),
         reserved_kbps=max(ledger.reserved_kbps(call, first, way) for way in (True, False)),
         used_kbps=_used_kbps(call, first, now, interval_s),
         loss_percent=max(stream.loss_percent for stream in now),
@@ -45,6 +45,16 @@ def call_state(
         conversation=call.conversation,
         streams=tuple(call.streams.values()),
     )
+
+
+def codec_of(call: Call) -> str:
+    """Returns the codec of a call, or both with "/" where the directions differ."""
+    return "/".join(dict.fromkeys(stream.codec for stream in call.speaking if stream))
+
+
+def packet_ms_of(call: Call) -> float | None:
+    """Returns the packetisation of a call, by the direction that was heard first."""
+    return next((stream.packet_ms for stream in call.speaking if stream), None)
 
 
 def _used_kbps(call: Call, link: int, now: list[StreamState], interval_s: float) -> float:

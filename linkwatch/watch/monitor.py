@@ -4,6 +4,7 @@ Time is the frames' time. Ticks lie on whole multiples of the interval, so a cap
 has its ticks, and raises its alarms, at the very seconds at which they came live.
 """
 
+from collections import Counter
 from collections.abc import Iterator
 
 import numpy as np
@@ -12,11 +13,11 @@ from linkwatch.frames import CounterReading, FrameBatch, TapStatistics
 from linkwatch.plan.planfile import Plan
 from linkwatch.voice.listener import Call, Listener, StreamState, most_at_once
 from linkwatch.watch.alarms import AlarmBook
-from linkwatch.watch.calls import call_state
+from linkwatch.watch.calls import call_state, codec_of, packet_ms_of
 from linkwatch.watch.crossing import Crossings
 from linkwatch.watch.judge import Judge
 from linkwatch.watch.ledger import Ledger, Load
-from linkwatch.watch.snapshot import Alarm, CallState, Snapshot, TapHealth
+from linkwatch.watch.snapshot import Alarm, CallState, CodecCount, Snapshot, TapHealth
 
 SECOND_NS = 1_000_000_000
 # A silent stretch of a capture is passed over after this time: every stream has ended and every
@@ -156,6 +157,7 @@ class Monitor:
             calls=self._shown(interval_s) if self._with_calls else (),
             alarms=self._alarms.standing(),
             cleared=self._alarms.cleared(),
+            codecs=_codecs(up),
         )
 
     def _shown(self, interval_s: float) -> tuple[CallState, ...]:
@@ -190,6 +192,12 @@ class Monitor:
             start, end = spans.get(call.conversation, (call.start, call.end))
             spans[call.conversation] = min(start, call.start), max(end, call.end)
         return most_at_once((call.start, call.end) for call in calls), most_at_once(spans.values())
+
+
+def _codecs(up: list[Call]) -> tuple[CodecCount, ...]:
+    """Returns how many of these calls use which codec and packetisation."""
+    used = Counter((codec_of(call), packet_ms_of(call)) for call in up)
+    return tuple(CodecCount(codec, ms, calls) for (codec, ms), calls in used.most_common())
 
 
 def _load(

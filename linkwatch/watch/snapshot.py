@@ -12,6 +12,7 @@ from linkwatch.voice.figures import StreamState
 __all__ = [
     "Alarm",
     "CallState",
+    "CodecCount",
     "DirectionState",
     "Kind",
     "LinkState",
@@ -198,6 +199,21 @@ class CallState:
 
 
 @dataclass(frozen=True, slots=True)
+class CodecCount:
+    """How many calls that are up use a codec.
+
+    Attributes:
+        codec: The codec to the site and from it: one name, or two with "/" where they differ.
+        packet_ms: Packetisation, or None while it is not known.
+        calls: How many.
+    """
+
+    codec: str
+    packet_ms: float | None
+    calls: int
+
+
+@dataclass(frozen=True, slots=True)
 class Snapshot:
     """Everything known at one moment.
 
@@ -212,6 +228,7 @@ class Snapshot:
         calls: The calls that are up, and those that ended a short while ago.
         alarms: The alarms that stand, worst first.
         cleared: The alarms cleared a short while ago, latest first.
+        codecs: The codecs of the calls that are up, the most used first.
     """
 
     time: int
@@ -224,3 +241,4 @@ class Snapshot:
     calls: tuple[CallState, ...]
     alarms: tuple[Alarm, ...]
     cleared: tuple[Alarm, ...]
+    codecs: tuple[CodecCount, ...] = ()

@@ -81,6 +81,13 @@ def test_calls_are_counted_and_costed_to_the_octet(wire, plan, tmp_path):
     snapshots = [json.loads(line) for line in answer(process).splitlines()]
     assert max(s["calls_up"] for s in snapshots) == 4
     assert max(s["links"][0]["to_site"]["calls"] for s in snapshots) == 4
+    fullest = max(snapshots, key=lambda s: (s["calls_up"], s["links"][0]["to_site"]["used_kbps"]))
+    assert {(used["codec"], used["packet_ms"], used["calls"]) for used in fullest["codecs"]} == {
+        ("PCMU", 20, 1),
+        ("PCMA", 20, 1),
+        ("G722", 20, 1),
+        ("unknown", 20, 1),
+    }
     from_site = recorder.ip_octets("192.0.2.1", range(5000, 5040, 10))
     to_site = recorder.ip_octets("192.0.2.2", range(6000, 6040, 10))
     for way, lengths in (("from_site", from_site), ("to_site", to_site)):
