@@ -57,7 +57,7 @@ def test_the_demo_runs_in_a_terminal_and_ends_by_a_key(terminal):
     assert "to site" in screen
     assert "G729" in terminal.screen_with("10.20.1.")
     terminal.press("?")
-    terminal.screen_with("quit")
+    terminal.screen_with("leave")
     terminal.press("Escape")
     terminal.screen_with("10.20.1.")
     terminal.tmux("resize-window", "-x", "60", "-y", "16")
