@@ -78,8 +78,9 @@ def _many_walks(octets: Octets, place: int, order: str) -> tuple[Longs, int]:
     proved = int(np.argmin(np.append(ended[:-1] == begin[1:], False)))
     walks = np.concatenate([walk for walk, _ in steps])
     places = np.concatenate([found for _, found in steps])
-    right = walks < proved
-    return np.sort(places[right]), int(begin[proved])
+    right = np.flatnonzero(walks < proved)
+    in_order = right[np.argsort(walks[right].astype(np.uint16), kind="stable")]
+    return places[in_order], int(begin[proved])
 
 
 def _guesses(

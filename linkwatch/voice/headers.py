@@ -113,6 +113,8 @@ def _network_layer(batch: FrameBatch) -> tuple[Longs, Longs, Longs]:
         at = batch.offsets + header
         protocol = _types(octets, batch.offsets + type_at, at <= end)
     for _ in range(MOST_TAGS):
+        if ((protocol == ETHERTYPE_IPV4) | (protocol == ETHERTYPE_IPV6)).all():
+            break
         tagged = np.flatnonzero(np.isin(protocol, (*ETHERTYPES_VLAN, ETHERTYPE_MPLS)))
         session = np.flatnonzero(protocol == ETHERTYPE_PPPOE)
         if not len(tagged) and not len(session):

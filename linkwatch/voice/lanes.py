@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 
-from linkwatch.frames import Longs
+from linkwatch.frames import Longs, Rows
 from linkwatch.voice.groups import Groups, grouping
 from linkwatch.voice.headers import Mask
 from linkwatch.voice.jitter import Reals, jitter_after
@@ -62,7 +62,12 @@ class Lanes:
         self._lane = np.zeros(MOST_LANES, LANE)
         self._steps = np.zeros((MOST_LANES, LONGEST_PACKET_MS * STEPS_A_MS + 1), np.uint32)
         self._free = list(range(MOST_LANES - 1, 0, -1))
+        self._top = 0  # lanes above this one were never used
         self.left_out = 0
+
+    @property
+    def _used(self) -> Rows:
+        return self._lane[: self._top]
 
     def hear(
         self,
@@ -103,6 +108,7 @@ class Lanes:
         _, first = np.unique(new, return_index=True)
         for packet in missing[np.sort(first)[: len(self._free)]]:
             number = self._free.pop()
+            self._top = max(self._top, number + 1)
             meaning = self._recogniser.meaning(int(payload_type[packet]))
             lane = self._lane[number : number + 1]
             lane["source"] = source[packet]
@@ -186,8 +192,11 @@ class Lanes:
         np.add.at(self._steps.reshape(-1), place, np.uint32(1))
 
     def main(self, sources: int) -> Longs:
-        """Returns the lane with most packets of each source, speech before all else; 0 is none."""
-        used = np.flatnonzero(self._lane["packets"])
+        """Returns the lane with most packets of each of the first so many sources.
+
+        Speech goes before all else; 0 is none.
+        """
+        used = np.flatnonzero(self._used["packets"])
         lane = self._lane[used]
         # The last one written stays, so the best comes last.
         best_last = np.lexsort((-lane["payload_type"].astype(int), lane["packets"], lane["speech"]))
@@ -206,7 +215,7 @@ class Lanes:
 
     def forget(self, gone: Mask) -> None:
         """Frees the lanes of the sources for which this is true."""
-        lanes = np.flatnonzero((self._lane["packets"] > 0) & gone[self._lane["source"]])
+        lanes = np.flatnonzero((self._used["packets"] > 0) & gone[self._used["source"]])
         self._number[self._lane["source"][lanes], self._lane["payload_type"][lanes]] = 0
         self._lane[lanes] = np.zeros((), LANE)
         self._steps[lanes] = 0

@@ -14,7 +14,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from linkwatch.frames import Longs
+from linkwatch.frames import Longs, Rows
 from linkwatch.plan.framing import Framing
 from linkwatch.voice.figures import StreamState
 from linkwatch.voice.groups import Groups, grouping
@@ -127,7 +127,13 @@ class StreamTable:
         self._probation: dict[int, Probation] = {}
         self._names: dict[int, Names] = {}
         self._free = list(range(MOST_SOURCES - 1, -1, -1))
+        self._top = 0  # rows above this one were never used
         self._last_serial = self._peak = self._left_out = self._ended_packets = 0
+
+    @property
+    def _used(self) -> Rows:
+        """The rows that were ever used: the memory of the others is not even touched."""
+        return self._source[: self._top]
 
     def hear(self, packets: RtpPackets) -> None:
         """Takes in the packets of a batch, in the order of their arrival."""
@@ -161,36 +167,33 @@ class StreamTable:
         Args:
             now: The time, nanoseconds since 1970-01-01 UTC.
         """
-        rows = np.flatnonzero(self._source["state"] == ACCEPTED)
+        rows = np.flatnonzero(self._used["state"] == ACCEPTED)
         names = [self._names[row] for row in rows.tolist()]
-        reports = [
-            StreamReport(serial, name.ends, state, tuple(link_octets), frame_octets)
-            for serial, name, state, link_octets, frame_octets in zip(
-                self._source["serial"][rows].tolist(),
-                names,
-                self._states(rows, names, now),
-                self._new_link_octets[rows].tolist(),
-                self._source["new_frame_octets"][rows].tolist(),
-                strict=True,
-            )
-        ]
+        columns = (
+            self._source["serial"][rows].tolist(),
+            [name.ends for name in names],
+            self._states(rows, names, now),
+            map(tuple, self._new_link_octets[rows].tolist()),
+            self._source["new_frame_octets"][rows].tolist(),
+        )
+        reports = list(map(StreamReport._make, zip(*columns, strict=True)))
         self._new_link_octets[rows] = 0
         self._source["new_frame_octets"][rows] = 0
         return reports
 
     def forget(self, now: int, probation_ns: int = PROBATION_NS) -> None:
         """Gives up the places of streams that have ended and of sources that were never RTP."""
-        quiet = now - self._source["last"]
-        state = self._source["state"]
+        quiet = now - self._used["last"]
+        state = self._used["state"]
         ended = (state == ACCEPTED) & (quiet > ENDED_NS)
         gone = ended | (state == ON_PROBATION) & (quiet > probation_ns)
         rows = np.flatnonzero(gone)
         if not len(rows):
             return
-        self._ended_packets += int(self._source["packets"][ended].sum())
+        self._ended_packets += int(self._used["packets"][ended].sum())
         self._lanes.forget(gone)
         self._source[rows] = np.zeros((), SOURCE)
-        self._index.keep(np.flatnonzero(self._source["state"] != FREE))
+        self._index.keep(np.flatnonzero(self._used["state"] != FREE))
         for row in rows[::-1].tolist():
             self._probation.pop(row, None)
             self._names.pop(row, None)
@@ -198,12 +201,12 @@ class StreamTable:
 
     def statistics(self) -> StreamStatistics:
         """Returns how full the table is."""
-        accepted = self._source["state"] == ACCEPTED
+        accepted = self._used["state"] == ACCEPTED
         return StreamStatistics(
             streams=int(np.count_nonzero(accepted)),
             on_probation=len(self._probation),
             peak=self._peak,
-            voice_packets=self._ended_packets + int(self._source["packets"][accepted].sum()),
+            voice_packets=self._ended_packets + int(self._used["packets"][accepted].sum()),
             left_out=self._left_out + self._lanes.left_out,
         )
 
@@ -219,6 +222,7 @@ class StreamTable:
             if not len(first):
                 break
             rows = np.array([self._free.pop() for _ in first])
+            self._top = max(self._top, int(rows.max()) + 1)
             self._index.add(rows, tuple(word[first] for word in key))
             self._begin(rows, packets, missing[first])
             row[missing] = self._index.find(key)
@@ -318,7 +322,7 @@ class StreamTable:
 
     def _states(self, rows: Longs, names: list[Names], now: int) -> list[StreamState]:
         source = self._source[rows]
-        lanes = self._lanes.main(MOST_SOURCES)[rows]
+        lanes = self._lanes.main(self._top)[rows]
         lane = self._lanes.figures(lanes)
         packet_ms = self._lanes.packet_ms(lanes)
         known = packet_ms > 0
