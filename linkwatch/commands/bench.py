@@ -24,9 +24,9 @@ from linkwatch.frames import Octets
 from linkwatch.plan.planfile import default_plan
 from linkwatch.run import read_capture
 
-ROUNDS = 3
+ROUNDS = 5
 WARM_UP_PACKETS = 10
-MOST_PACKETS = {"read": sys.maxsize, "dpkt": 20_000, "scapy": 1_500}
+MOST_PACKETS = {"read": sys.maxsize, "dpkt": 50_000, "scapy": 2_000}
 FRAME_OCTETS = 14 + 20 + 8 + 12 + 160
 RECORD_OCTETS = 16 + FRAME_OCTETS
 START_S = 1_800_000_000
@@ -64,7 +64,7 @@ def run_bench(streams: int, packets: int) -> Bench:
         raise InputError(
             "bench",
             got=f"{streams} streams of {packets} packets",
-            wanted="1 to 30,000 streams, 10 packets of each and 20,000 to 20 million in all",
+            wanted="1 to 30,000 streams, 10 packets of each and 50,000 to 20 million in all",
         )
     with tempfile.TemporaryDirectory() as folder:
         path = Path(folder) / "bench.pcap"

@@ -131,7 +131,8 @@ class Lanes:
         clock = groups.each(state["clock"])
         index = np.arange(len(time))
         ordinal = index - groups.each(groups.start - state["packets"])
-        ticks = (timestamp - groups.before(timestamp, state["timestamp"]) + HALF) % WHOLE - HALF
+        ticks = timestamp - groups.before(timestamp, state["timestamp"])
+        ticks = (ticks + HALF & WHOLE - 1) - HALF  # the short way round 32 bits
         elapsed = time - groups.before(time, state["time"])
         follows = (ordinal > 0) & (segment == groups.before(segment, state["segment"]))
         follows &= ordinal >= groups.each(state["clock_from"])

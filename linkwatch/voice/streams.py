@@ -270,12 +270,12 @@ class StreamTable:
         """
         source, row = self._source, groups.owner
         highest = source["highest"][row]
-        step = (packets.sequence - groups.before(packets.sequence, highest)) % MODULUS
+        step = packets.sequence - groups.before(packets.sequence, highest) & MODULUS - 1
         regular = groups.all((step > 0) & (step < MAX_DROPOUT))
         gone = np.cumsum(step)
         number = gone + groups.each(highest - gone[groups.start] + step[groups.start])
         which = slice(None) if regular.all() else np.flatnonzero(groups.each(regular))
-        self._memory[groups.each(row)[which], number[which] % MEMORY] = number[which]
+        self._memory[groups.each(row)[which], number[which] & MEMORY - 1] = number[which]
         source["highest"][row[regular]] = number[groups.last[regular]]
         source["received"][row[regular]] += groups.size[regular]
         source["different"][row[regular]] += groups.size[regular]
