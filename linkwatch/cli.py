@@ -94,10 +94,8 @@ def watch(
     if tap is None and speed is None:
         speed = 1.0
     source = Source(tap, capture, scene, speed, for_)
-    source.check()
-    found = watching.plan_for(plan, source)
     raise typer.Exit(
-        watching.board(source, found, every_s=_interval(every), need_packets=need_packets)
+        watching.board(source, plan, every_s=_interval(every), need_packets=need_packets)
     )
 
 
@@ -108,8 +106,7 @@ def demo(plan: PlanFile = None, speed: Speed = None) -> None:
     from linkwatch.run import Source
 
     source = Source(scene=True, speed=1.0 if speed is None else speed)
-    source.check()
-    raise typer.Exit(watching.board(source, watching.plan_for(plan, source)))
+    raise typer.Exit(watching.board(source, plan))
 
 
 @app.command()
@@ -129,12 +126,10 @@ def read(
     from linkwatch.run import Source
 
     source = Source(capture=capture, speed=1.0 if board and speed is None else speed)
-    source.check()
-    found = watching.plan_for(plan, source)
     if board:
-        raise typer.Exit(watching.board(source, found, every_s=_interval(every)))
+        raise typer.Exit(watching.board(source, plan, every_s=_interval(every)))
     raise typer.Exit(
-        watching.read(capture, found, every_s=_interval(every), as_json=as_json, judge=judge)
+        watching.read(source, plan, every_s=_interval(every), as_json=as_json, judge=judge)
     )
 
 
@@ -155,10 +150,8 @@ def log(
     from linkwatch.run import Source
 
     source = Source(tap, capture, scene, speed, for_)
-    source.check()
-    found = watching.plan_for(plan, source)
     raise typer.Exit(
-        watching.log(source, found, every_s=_interval(every), as_json=as_json, judge=judge)
+        watching.log(source, plan, every_s=_interval(every), as_json=as_json, judge=judge)
     )
 
 
@@ -180,9 +173,7 @@ def count(
     if tap is not None and for_ is None:
         for_ = watching.COUNT_S
     source = Source(tap, capture, scene, speed, for_)
-    source.check()
-    found = watching.plan_for(plan, source)
-    raise typer.Exit(watching.count(source, found, as_json=as_json, judge=judge))
+    raise typer.Exit(watching.count(source, plan, as_json=as_json, judge=judge))
 
 
 @app.command()

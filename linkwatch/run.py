@@ -21,7 +21,10 @@ COUNTERS_EVERY_NS = SECOND_NS // 4
 
 @dataclass(frozen=True, slots=True)
 class Source:
-    """Where frames are to come from; exactly one of the first three.
+    """Where frames are to come from.
+
+    Raises:
+        InputError: It is not exactly one of the first three, or a figure cannot be.
 
     Attributes:
         tap: A port's name.
@@ -37,8 +40,7 @@ class Source:
     speed: float | None = None
     for_s: float | None = None
 
-    def check(self) -> None:
-        """Raises InputError unless it is one source, with figures that can be."""
+    def __post_init__(self) -> None:
         given = (self.tap is not None) + (self.capture is not None) + self.scene
         if given != 1:
             raise InputError(
@@ -70,7 +72,6 @@ def open_tap(source: Source, *, need_packets: bool = True) -> Tap:
         PermissionMissing: Packets may not be read, and they are needed.
         LinkwatchError: The source cannot be opened.
     """
-    source.check()
     if source.scene:
         from linkwatch.tap.scene import Scene
 

@@ -46,7 +46,13 @@ def plan_for(path: Path | None, source: Source) -> Plan:
 
 
 def read(
-    path: Path, plan: Plan, *, every_s: float, as_json: bool, judge: bool, out: Out = say
+    source: Source,
+    plan: Path | None,
+    *,
+    every_s: float,
+    as_json: bool,
+    judge: bool,
+    out: Out = say,
 ) -> int:
     """Reads a capture and prints what it held; returns the exit status."""
     last: list[Snapshot] = []
@@ -57,7 +63,8 @@ def read(
         if as_json:
             kept.append(export.snapshot_json(snapshot))
 
-    reading = read_capture(path, plan, every_s=every_s, on_snapshot=keep)
+    path = source.capture or Path()
+    reading = read_capture(path, plan_for(plan, source), every_s=every_s, on_snapshot=keep)
     monitor = reading.monitor
     calls, most, alarms = monitor.calls(), monitor.most_calls(), monitor.alarms()
     if as_json:
@@ -76,21 +83,21 @@ def read(
 
 
 def log(
-    source: Source, plan: Plan, *, every_s: float, as_json: bool, judge: bool, out: Out = say
+    source: Source, plan: Path | None, *, every_s: float, as_json: bool, judge: bool, out: Out = say
 ) -> int:
     """Prints a line for each snapshot until the source ends; returns the exit status."""
     bad = False
-    for snapshot in _snapshots(source, plan, every_s):
+    for snapshot in _snapshots(source, plan_for(plan, source), every_s):
         line = json.dumps(export.snapshot_json(snapshot)) if as_json else text.log_line(snapshot)
         out(line)
         bad = bad or bool(snapshot.alarms)
     return 1 if judge and bad else 0
 
 
-def count(source: Source, plan: Plan, *, as_json: bool, judge: bool, out: Out = say) -> int:
+def count(source: Source, plan: Path | None, *, as_json: bool, judge: bool, out: Out = say) -> int:
     """Prints how many calls are up when the time to listen is over; returns the exit status."""
     last = None
-    for snapshot in _snapshots(source, plan, every_s=1.0):
+    for snapshot in _snapshots(source, plan_for(plan, source), every_s=1.0):
         last = snapshot
     if last is None:
         raise InputError(source.name, got="no frame at all", remedy="Listen longer, with --for.")
@@ -98,7 +105,9 @@ def count(source: Source, plan: Plan, *, as_json: bool, judge: bool, out: Out = 
     return 1 if judge and last.alarms else 0
 
 
-def board(source: Source, plan: Plan, *, every_s: float = 1.0, need_packets: bool = False) -> int:
+def board(
+    source: Source, plan: Path | None, *, every_s: float = 1.0, need_packets: bool = False
+) -> int:
     """Opens the dashboard on a source; returns the exit status."""
     if not (sys.stdin.isatty() and sys.stdout.isatty()):
         raise InputError(
@@ -106,14 +115,15 @@ def board(source: Source, plan: Plan, *, every_s: float = 1.0, need_packets: boo
             got="no terminal",
             remedy="Start it in a terminal, or use `linkwatch log` instead.",
         )
+    promised = plan_for(plan, source)  # before the port: a fault in it needs no rights to be told
     tap = open_tap(source, need_packets=need_packets)
     from linkwatch.board.app import Board
     from linkwatch.tap.counters import CountersOnly
 
     hearing = not isinstance(tap, CountersOnly)
-    monitor = Monitor(plan, tap.name, every_s=every_s, hearing=hearing)
+    monitor = Monitor(promised, tap.name, every_s=every_s, hearing=hearing)
     watch = Watch(tap, monitor, speed=source.speed, for_s=source.for_s)
-    app = Board(f"{plan.site} - {tap.name}", ThreadedWatch(watch), CAUTIONS)
+    app = Board(f"{promised.site} - {tap.name}", ThreadedWatch(watch), CAUTIONS)
     app.run()
     return app.return_code or 0
 

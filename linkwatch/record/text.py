@@ -1,4 +1,4 @@
-"""Snapshots and readings as text for people, in 80 columns."""
+"""Snapshots and readings as text for people."""
 
 from collections.abc import Sequence
 from datetime import datetime

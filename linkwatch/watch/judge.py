@@ -114,13 +114,11 @@ class Judge:
         expected, lost = looks[-1][0] - looks[0][0], looks[-1][1] - looks[0][1]
         percent = 100 * max(0, lost) / expected if expected > 0 else 0.0
         worst = percent / limits.loss_percent
-        text = (
-            f"{percent:.1f} % lost lately from {stream.source}: look for a full queue or a bad line"
-        )
+        text = f"{percent:.1f} % lost lately: look for a full queue or a bad line"
         if stream.jitter_ms and stream.jitter_ms / limits.jitter_ms > worst:
             worst = stream.jitter_ms / limits.jitter_ms
             text = (
-                f"{stream.jitter_ms:.0f} ms jitter from {stream.source}: voice waits behind other "
+                f"{stream.jitter_ms:.0f} ms jitter: voice waits behind other "
                 "traffic; check its queue and marking"
             )
         if worst > BACK_WITHIN:
