@@ -30,6 +30,7 @@ class ListeningSocket:
     """
 
     def __init__(self, name: str) -> None:
+        import scapy.arch  # noqa: F401 - tells scapy which sockets this system has
         from scapy.config import conf
         from scapy.error import Scapy_Exception
 
@@ -40,7 +41,7 @@ class ListeningSocket:
         self._remarks = ["frames that the system drops before they are read are not known here"]
         try:
             self._socket = conf.L2listen(iface=name, filter="udp or (vlan and udp)")
-        except Scapy_Exception as error:
+        except (Scapy_Exception, ValueError) as error:
             raise _meant(name, error) from None
 
     @property

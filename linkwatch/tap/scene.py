@@ -20,7 +20,7 @@ from linkwatch.tap.story import Flow
 START_NS = 1_772_438_400 * 10**9  # 2026-03-02 08:00:00 UTC, a Monday
 SECOND_NS, MS_NS = 10**9, 10**6
 BATCH_MS = 100
-LONGEST_DELAY_MS = 40
+LONGEST_DELAY_MS = 60  # more than jitter, lateness and copy can come to
 WIDTH = 256  # octets of a row of templates; the longest frame is shorter
 JITTER_NS, BAD_JITTER_NS = 2 * MS_NS, 24 * MS_NS
 LATE_SHARE, COPY_SHARE, LATE_NS, COPY_NS = 0.0006, 0.0004, 27 * MS_NS, 300_000
