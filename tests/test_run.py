@@ -50,9 +50,9 @@ def watch_on(tap, **options):
 
 def test_a_source_is_exactly_one_thing():
     """None, or two, of port, capture and scene is an error that lists them."""
-    for given in ({}, {"tap": "eth0", "scene": True}):
+    for wrong in ({}, {"tap": "eth0", "scene": True}):
         with pytest.raises(InputError, match="--tap NIC, --capture FILE and --scene"):
-            Source(**given)
+            Source(**wrong)
 
 
 @pytest.mark.parametrize("speed", [0, -1, float("nan"), float("inf")])

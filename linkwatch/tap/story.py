@@ -17,8 +17,8 @@ PACKET_MS, TICKS = 20, 160
 
 SITE, CENTRAL = "10.20.1.{}", "10.9.0.{}"
 SITE_IPV6, CENTRAL_IPV6 = "2001:db8:20::{}", "2001:db8:9::{}"
-DATA_KBPS, FULL_KBPS = 180.0, 560.0  # other traffic, usually and while a backup runs
-FULL_FROM_S, FULL_TO_S = 262, 286
+DATA_KBPS, FULL_KBPS = 180.0, 435.0  # other traffic, usually and while a backup runs
+FULL_FROM_S, FULL_TO_S = 243, 261
 
 
 @dataclass(frozen=True, slots=True)

@@ -217,6 +217,8 @@ class StreamTable:
             key = tuple(word[missing] for word in packets.key)
             _, first = np.unique(self._index.mixed(key), return_index=True)
             if len(first) > len(self._free):
+                known = row >= 0  # who speaks in this very batch is not quiet
+                self._source["last"][row[known]] = packets.time[known]
                 self.forget(int(packets.time[-1]), PROBATION_CROWDED_NS)
             first = np.sort(first)[: len(self._free)]
             if not len(first):

@@ -11,6 +11,7 @@ from wirebuild import GATEWAY, MS, PHONE, START_NS, batch, both_ways, ethernet, 
 
 from linkwatch.frames import LinkType
 from linkwatch.plan.framing import make_framing
+from linkwatch.voice import streams
 from linkwatch.voice.listener import Listener
 
 ETHERNET = make_framing(["ethernet"])
@@ -191,6 +192,21 @@ def test_a_flood_of_random_sources_leaves_the_real_call_right():
     (call,) = listener.calls
     assert [s.lost for s in call.streams.values()] == [0, 0]
     assert listener.statistics().left_out > 0
+
+
+def test_who_speaks_in_a_crowd_keeps_his_place(monkeypatch):
+    """A table that makes room never takes the row of a source whose packet it holds in hand."""
+    monkeypatch.setattr(streams, "MOST_SOURCES", 16)
+    slow = speech(packets=12, packet_ms=2000)  # a packet every two seconds
+    frames, rng = [], np.random.default_rng(5)
+    for time, octets in slow:
+        frames.append((time, octets))
+        frames += [
+            (time, ethernet(ip_udp(b"\x80\x00" + rng.bytes(26), ports=(7, 8)))) for _ in range(40)
+        ]
+    listener = heard(frames, cuts=range(41, len(frames), 41))
+    stream = only_stream(listener)
+    assert (stream.packets, stream.lost, stream.ssrc) == (12, 0, 0x1234)
 
 
 packets_of_one_source = st.lists(
