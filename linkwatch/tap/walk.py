@@ -16,8 +16,8 @@ from linkwatch.frames import Longs, Octets
 HEAD = 16  # octets of a record's head: seconds, part of a second, captured, original
 CAPTURED = 8
 LONGEST_FRAME = 256 << 10  # octets; no link carries frames so long, so a longer one is corrupt
-WALKS = 256
-SEARCH = 2048  # octets searched for a head; a frame of 1500 octets leaves one in them
+WALKS = 512
+SEARCH = 1024  # octets searched for a head; frames of voice are far shorter
 MARGIN = 64 << 10  # octets at the end of a piece that many walks leave to the one
 LEAST = WALKS * SEARCH * 2  # octets below which one walk is as good
 ALIKE = 3  # heads in a row that must look like heads
@@ -92,12 +92,13 @@ def _guesses(
     and if the two that should follow do as well.
     """
     spread = (len(octets) - place - MARGIN - SEARCH) // WALKS
-    upper = octets[place + 2 : place + 4] if order == "<" else octets[place : place + 2]
-    shift = 2 if order == "<" else 0
-    view = np.ndarray((WALKS, SEARCH), np.uint8, octets, place + shift, (spread, 1))
-    after = np.ndarray((WALKS, SEARCH), np.uint8, octets, place + shift + 1, (spread, 1))
-    walk, offset = np.nonzero((view == upper[0]) & (after == upper[1]))
-    at = place + walk * spread + offset
+    high, low = (3, 2) if order == "<" else (0, 1)
+    searched = np.ndarray((WALKS, SEARCH), np.uint8, octets, place + high, (spread, 1))
+    hit = np.flatnonzero((searched == octets[place + high]).ravel())
+    walk = hit // SEARCH
+    at = place + walk * spread + hit % SEARCH
+    likely = octets[at + low] == octets[place + low]
+    walk, at = walk[likely], at[likely]
     alike = np.ones(len(at), np.bool_)
     following = at.copy()
     seconds = heads[place] >> 16
