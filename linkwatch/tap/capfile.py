@@ -19,7 +19,7 @@ from linkwatch.errors import CaptureError
 from linkwatch.frames import CounterReading, FrameBatch, LinkType, TapStatistics
 from linkwatch.tap.records import LONGEST_BLOCK, Frames, Pcapng, format_of
 
-PIECE = 8 << 20  # octets read at once: they stay in the processor's cache until they are used
+PIECE = 4 << 20  # octets read at once: they stay in the processor's cache until they are used
 HEAD = 24  # octets that tell the format
 SLACK = 64  # octets behind a piece that a head may be gathered into
 GZIP_MAGIC = b"\x1f\x8b"

@@ -16,7 +16,7 @@ from linkwatch.frames import Longs, Octets
 HEAD = 16  # octets of a record's head: seconds, part of a second, captured, original
 CAPTURED = 8
 LONGEST_FRAME = 256 << 10  # octets; no link carries frames so long, so a longer one is corrupt
-WALKS = 512
+WALKS = 256
 SEARCH = 1024  # octets searched for a head; frames of voice are far shorter
 MARGIN = 64 << 10  # octets at the end of a piece that many walks leave to the one
 LEAST = WALKS * SEARCH * 2  # octets below which one walk is as good
