@@ -115,11 +115,13 @@ def board(
             got="no terminal",
             remedy="Start it in a terminal, or use `linkwatch log` instead.",
         )
-    promised = plan_for(plan, source)  # before the port: a fault in it needs no rights to be told
-    tap = open_tap(source, need_packets=need_packets)
+    # All this comes before the port is opened, since root is given up with that: a fault in the
+    # plan needs no rights to be told, and the caller may not be able to read root's modules.
+    promised = plan_for(plan, source)
     from linkwatch.board.app import Board
     from linkwatch.tap.counters import CountersOnly
 
+    tap = open_tap(source, need_packets=need_packets)
     hearing = not isinstance(tap, CountersOnly)
     monitor = Monitor(promised, tap.name, every_s=every_s, hearing=hearing)
     watch = Watch(tap, monitor, speed=source.speed, for_s=source.for_s)

@@ -75,6 +75,9 @@ class PacketRing:
         self._remarks: dict[str, None] = {}  # in order, each once
         self._closed = self._reading = False
         self._until = 0
+        # The first reading is where counting begins; it also loads what reading takes, while
+        # root may still be needed to load it.
+        self._counters.read(time.time_ns())
         self._open()
 
     def _open(self) -> None:

@@ -153,6 +153,24 @@ def test_without_the_right_to_read_it_ends_with_the_remedy(wire, plan):
     assert "sudo" in err
 
 
+def test_under_sudo_root_is_given_up_and_the_watch_goes_on(wire, plan):
+    """From the first snapshot on, the process is its caller's, and hears all the same."""
+    caller = ["env", "SUDO_UID=65534", "SUDO_GID=65534"]
+    asked = [*caller, sys.executable, "-m", "linkwatch", "log", "--tap", wire.port("far")]
+    process = wire.run("far", [*asked, "--plan", plan, "--json"])
+    assert process.stdout.readline(), process.stderr.read()
+    status = Path(f"/proc/{process.pid}/status").read_text().splitlines()
+    told = dict(line.split(":\t", 1) for line in status if ":\t" in line)
+    assert set(told["Uid"].split()) == set(told["Gid"].split()) == {"65534"}
+    assert int(told["CapEff"], 16) == 0
+    senders = call(wire, "PCMU", 1, packets=75)
+    for sender in senders:
+        answer(sender)
+    process.terminate()
+    snapshots = [json.loads(line) for line in answer(process).splitlines()]
+    assert max(s["calls_up"] for s in snapshots) == 1
+
+
 def test_it_starts_before_the_first_call_and_ends_when_asked(wire, plan):
     """SIGINT ends a watch with status 130 and without a traceback."""
     process = logger(wire, "far", plan, 60)
