@@ -11,6 +11,7 @@ from linkwatch.errors import InputError
 from linkwatch.plan.planfile import Plan, default_plan, load_plan, parse_plan
 from linkwatch.record import export, text
 from linkwatch.run import Source, ThreadedWatch, Watch, open_tap, read_capture
+from linkwatch.tap.rights import hidden_from_caller
 from linkwatch.watch.monitor import Monitor
 from linkwatch.watch.snapshot import Snapshot
 
@@ -115,8 +116,13 @@ def board(
             got="no terminal",
             remedy="Start it in a terminal, or use `linkwatch log` instead.",
         )
-    # All this comes before the port is opened, since root is given up with that: a fault in the
-    # plan needs no rights to be told, and the caller may not be able to read root's modules.
+    # All this comes before the port is opened, since root is given up with that.
+    if source.tap and (hidden := hidden_from_caller()):
+        raise InputError(
+            "the dashboard",
+            got=f"{hidden} cannot be read by the user who called sudo",
+            remedy="Install Linkwatch where that user may read it: root is given up once it runs.",
+        )
     promised = plan_for(plan, source)
     from linkwatch.board.app import Board
     from linkwatch.tap.counters import CountersOnly

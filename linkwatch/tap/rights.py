@@ -19,17 +19,45 @@ def give_up_root() -> str:
     if not hasattr(os, "geteuid") or os.geteuid() != 0:
         _no_new_privileges()
         return ""
-    user, group = os.environ.get("SUDO_UID", ""), os.environ.get("SUDO_GID", "")
-    if not (user.isdigit() and group.isdigit()) or int(user) == 0:
+    caller = _caller()
+    if caller is None:
         _no_new_privileges()
         return "running as root all the time; start it with sudo from a user of your own instead"
+    user, group = caller
     os.setgroups([])
-    os.setresgid(int(group), int(group), int(group))
-    os.setresuid(int(user), int(user), int(user))
+    os.setresgid(group, group, group)
+    os.setresuid(user, user, user)
     _no_new_privileges()
     if 0 in os.getresuid() or 0 in os.getresgid():
         raise OSError("root could not be given up")
     return ""
+
+
+def hidden_from_caller() -> str:
+    """Returns a file of the interpreter that who called sudo may not read, or "".
+
+    A face that loads modules as it goes would fail at the first of them, once root is given up.
+    """
+    caller = _caller() if hasattr(os, "geteuid") and os.geteuid() == 0 else None
+    if caller is None:
+        return ""
+    user, group = caller
+    os.setegid(group)
+    os.seteuid(user)
+    try:
+        library = os.__file__
+        return "" if os.access(library, os.R_OK, effective_ids=True) else library
+    finally:
+        os.seteuid(0)
+        os.setegid(0)
+
+
+def _caller() -> tuple[int, int] | None:
+    """Returns the user and group that called sudo, None where that was nobody but root."""
+    user, group = os.environ.get("SUDO_UID", ""), os.environ.get("SUDO_GID", "")
+    if not (user.isdigit() and group.isdigit()) or int(user) == 0:
+        return None
+    return int(user), int(group)
 
 
 def _no_new_privileges() -> None:

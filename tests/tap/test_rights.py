@@ -81,3 +81,25 @@ def test_where_root_has_to_stay_it_is_remarked_and_gains_nothing_new(environment
     assert now["users"] == ["0"] * 4
     assert "root" in now["remark"]
     assert now["no_new"] == "1"
+
+
+def test_what_the_caller_may_not_read_is_known_before_root_is_given_up():
+    """The answer is the system's own, root is still there afterwards, and without sudo it is ""."""
+    asked = "import os; from linkwatch.tap.rights import hidden_from_caller as h; print(h())"
+    for caller, library in (
+        ({"SUDO_UID": str(NOBODY), "SUDO_GID": str(NOBODY)}, os.__file__),
+        ({}, ""),
+    ):
+        kept = {name: value for name, value in os.environ.items() if not name.startswith("SUDO_")}
+        told = subprocess.run(
+            [sys.executable, "-c", f"{asked}; print(os.geteuid(), os.getegid())"],
+            env=kept | caller,
+            capture_output=True,
+            text=True,
+            check=True,
+        )
+        as_nobody = ["setpriv", f"--reuid={NOBODY}", f"--regid={NOBODY}", "--clear-groups"]
+        readable = subprocess.run([*as_nobody, "test", "-r", os.__file__], check=False)
+        hidden, ids = told.stdout.splitlines()
+        assert hidden == ("" if readable.returncode == 0 else library)
+        assert ids == "0 0"
