@@ -24,7 +24,7 @@ ETHERNET, RTP_HEADER, UDP_HEADER, IPV6_HEADER = 14, 12, 8, 40
 IPV4, IPV6, MPLS, PPPOE = 0x0800, 0x86DD, 0x8847, 0x8864
 VLANS = (0x8100, 0x88A8, 0x9100)
 UDP, FRAGMENT = 17, 44
-EXTENSIONS = (0, 43, FRAGMENT, 60)
+EXTENSIONS = (0, 43, 60)  # hop-by-hop, routing, destination options
 # With IPv6 extension headers the RTP header is not looked for: this is room for one of them.
 EXTENDED = IPV6_HEADER + 8 + UDP_HEADER + RTP_HEADER
 MOST_TAGS, MOST_LABELS = 2, 3
@@ -162,9 +162,14 @@ def _ipv4(program: Program, at: int, own: str) -> None:
 def _ipv6(program: Program, at: int, own: str) -> None:
     program.do(LOAD_ONE, at + 6)
     program.when(EQUAL, UDP, f"udp6 {own}")
+    program.when(EQUAL, FRAGMENT, f"fragment6 {own}")
     for extension in EXTENSIONS:
         program.when(EQUAL, extension, f"extended {own}")
     program.do(RETURN, 0)
+    program.at(f"fragment6 {own}")
+    program.do(LOAD_TWO, at + IPV6_HEADER + 2)
+    program.when(ANY_BIT, 0xFFF8, "", f"extended {own}")
+    program.do(RETURN, at + IPV6_HEADER + 8)  # a later one holds no header but its own
     program.at(f"extended {own}")
     program.do(RETURN, at + EXTENDED)
     program.at(f"udp6 {own}")

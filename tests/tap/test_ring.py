@@ -90,6 +90,23 @@ def test_no_octet_of_speech_is_in_the_ring(pair):
     assert SPEECH not in tap._memory.tobytes()
 
 
+def test_fragments_are_handed_over_as_far_as_their_headers(pair):
+    """The first fragment tells the RTP header; later ones, of either family, no payload at all."""
+    tap, out = pair
+    four = bytearray(ethernet(ip_udp(rtp(payload=0) + SPEECH * 20)))
+    struct.pack_into("!H", four, 14 + 6, 0x2000 | 5)  # more to come, 40 octets on (RFC 791 3.1)
+    six = ethernet(ip_udp(rtp(payload=0) + SPEECH * 20, "2001:db8::7", "2001:db8::9"))
+    head, rest = bytearray(six[: 14 + 40]), six[14 + 40 :]
+    head[14 + 6] = 44  # a fragment header follows (RFC 8200 4.5)
+    first = bytes(head) + struct.pack("!BBHI", 17, 0, 1, 9) + rest
+    later = bytes(head) + struct.pack("!BBHI", 17, 0, 40 << 3 | 1, 9) + SPEECH * 20
+    for frame in (bytes(four), first, later):
+        out.send(frame)
+    got = [octets for octets, _ in heard(tap, 3)]
+    assert [len(octets) for octets in got] == [14 + 20, 14 + 40 + 8 + 8 + 12, 14 + 40 + 8]
+    assert not any(SPEECH[:4] in octets for octets in got)
+
+
 def test_other_udp_shows_its_header_alone_and_the_rest_nothing(pair):
     """A name query is a UDP header; TCP and ARP are not heard at all."""
     tap, out = pair
