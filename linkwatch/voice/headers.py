@@ -218,7 +218,7 @@ def _ipv6(octets: Octets, at: Longs, end: Longs, frame: Longs) -> Datagrams:
         later = is_fragment & (step["fragment"] & 0xFFF8 != 0)
         fragmented[more] |= is_fragment
         header[more] += np.where(is_fragment, 8, (step["length"].astype(np.int64) + 1) * 8)
-        following[more] = np.where(later, -1, step["next"])
+        following[more] = np.where(later, -1, step["next"].astype(np.int64))
     total = row["payload"].astype(np.int64) + IPV6.itemsize
     is_udp = (row["version_class"] >> 12 == 6) & (following == PROTOCOL_UDP)
     is_udp &= (total >= header + UDP.itemsize) & (here + header + UDP.itemsize <= end[frame])
