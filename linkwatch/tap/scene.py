@@ -13,19 +13,21 @@ from ipaddress import ip_address
 import numpy as np
 import numpy.typing as npt
 
-from linkwatch.frames import CounterReading, FrameBatch, LinkType, Longs, TapStatistics
+from linkwatch.frames import CounterReading, FrameBatch, LinkType, Longs, Octets, TapStatistics
 from linkwatch.tap import story
 from linkwatch.tap.story import Flow
 
 START_NS = 1_772_438_400 * 10**9  # 2026-03-02 08:00:00 UTC, a Monday
 SECOND_NS, MS_NS = 10**9, 10**6
 BATCH_MS = 100
+MADE_MS = 1000  # made at once and then cut: a call of numpy costs more than the frames of a batch
 LONGEST_DELAY_MS = 60  # more than jitter, lateness and copy can come to
 WIDTH = 256  # octets of a row of templates; the longest frame is shorter
 JITTER_NS, BAD_JITTER_NS = 2 * MS_NS, 24 * MS_NS
 LATE_SHARE, COPY_SHARE, LATE_NS, COPY_NS = 0.0006, 0.0004, 27 * MS_NS, 300_000
 HASHES = (0x9E3779B97F4A7C15, 0xC2B2AE3D27D4EB4F, 0x165667B19E3779F9)
 RTP_OCTETS, UDP_OCTETS = 12, 8
+MARKER, EVENT_ENDS = 0x80, 0x80  # the highest bits of their octets (RFC 3550 5.1, RFC 4733 2.3)
 
 
 def scene_plan_text() -> str:
@@ -64,14 +66,25 @@ class Scene:
         self._to_site = np.array([flow.destination[0] in _site(flow) for flow in self._flows])
         self._pause = _stretches(flow.pause_s for flow in self._flows)
         self._only = _stretches(flow.only_s for flow in self._flows)
+        self._events = np.array([flow.payload_type == story.EVENT for flow in self._flows])
+        self._changing = np.zeros((len(templates), WIDTH), np.bool_)
+        for row, flow in enumerate(self._flows):
+            self._changing[row, slice(*(self._at[row] + octet for octet in flow.changing))] = True
 
     def batches(self) -> Iterator[FrameBatch]:
         """Yields the frames of a tenth of a second of the scene each."""
-        for begin in range(0, story.LENGTH_S * SECOND_NS, BATCH_MS * MS_NS):
-            if self._closed:
-                return
-            self._now = begin + BATCH_MS * MS_NS
-            yield self._between(begin, self._now)
+        for begin in range(0, story.LENGTH_S * SECOND_NS, MADE_MS * MS_NS):
+            end = begin + MADE_MS * MS_NS
+            made, done = self._between(begin, end), 0
+            for until in range(begin + BATCH_MS * MS_NS, end + 1, BATCH_MS * MS_NS):
+                if self._closed:
+                    return
+                stop = int(np.searchsorted(made.times, self._start + until))
+                batch = made.part(done, stop, self._start + until)
+                self._now, done = until, stop
+                self._frames += len(batch)
+                self._octets += int(batch.original.sum())
+                yield batch
 
     def _between(self, begin: int, end: int) -> FrameBatch:
         """Returns the frames that pass between two moments of the scene, in nanoseconds."""
@@ -116,24 +129,19 @@ class Scene:
         """Returns frames: their flows' templates, with what changes written into them."""
         octets = self._templates[flow]
         index = np.arange(len(flow))
-        speech = np.flatnonzero(~self._noise[flow])
-        of, at = flow[speech], self._at[flow[speech]]
-        sequence = self._sequence[of] + number[speech]
-        fixed = self._only[1][of] > 0  # events keep the timestamp of their beginning
-        since = np.where(
-            fixed, (self._only[0][of] - self._first[of]) // self._every[of], number[speech]
-        )
-        timestamp = self._timestamp[of] + since * story.TICKS
-        for place, value, width in ((2, sequence, 2), (4, timestamp, 4)):
-            for octet in range(width):
-                octets[speech, at + place + octet] = value >> 8 * (width - 1 - octet) & 0xFF
-        noise = np.flatnonzero(self._noise[flow])
-        for octet in range(2, RTP_OCTETS):
-            scattered = _chance(flow[noise], number[noise] * RTP_OCTETS + octet, 0) * 256
-            octets[noise, self._at[flow[noise]] + octet] = scattered.astype(np.uint8)
+        rtp = np.flatnonzero(~self._noise[flow])
+        of, at = flow[rtp], self._at[flow[rtp]]
+        begun = np.where(self._events[of], self._numbered(of, self._only[0]), number[rtp])
+        # All packets of an event keep the timestamp of its beginning (RFC 4733 2.2).
+        timestamp = self._timestamp[of] + begun * story.TICKS
+        _write(octets, rtp, at + 2, self._sequence[of] + number[rtp], 2)
+        _write(octets, rtp, at + 4, timestamp, 4)
+        event = self._events[of]
+        self._tell_events(octets, rtp[event], of[event], (number[rtp] - begun)[event])
+        row, octet = np.nonzero(self._changing[flow])
+        scattered = _chance(flow[row], number[row] * WIDTH + octet, 0) * 256
+        octets[row, octet] = scattered.astype(np.uint8)
         length = self._length[flow]
-        self._frames += len(flow)
-        self._octets += int(length.sum())
         return FrameBatch(
             octets.reshape(-1),
             index * WIDTH,
@@ -143,6 +151,23 @@ class Scene:
             LinkType.ETHERNET,
             self._start + end,
         )
+
+    def _tell_events(self, octets: Octets, rows: Longs, flow: Longs, number: Longs) -> None:
+        """Writes marker, end and duration of telephone events, whose packets count from 0."""
+        only_from, only_to = self._only
+        packets = self._numbered(flow, only_to) - self._numbered(flow, only_from)
+        until_end = packets - story.ENDINGS
+        at = self._at[flow]
+        octets[rows, at + 1] |= np.where(number == 0, MARKER, 0).astype(np.uint8)
+        ends = np.where(number >= until_end, EVENT_ENDS, 0)
+        octets[rows, at + RTP_OCTETS + 1] |= ends.astype(np.uint8)
+        duration = np.minimum(number, until_end) + 1
+        _write(octets, rows, at + RTP_OCTETS + 2, duration * story.TICKS, 2)
+
+    def _numbered(self, flow: Longs, moment: Longs) -> Longs:
+        """Returns the number of each flow's first packet that is due at its moment or later."""
+        number: Longs = -(-(moment[flow] - self._first[flow]) // self._every[flow])
+        return number
 
     def counters(self) -> CounterReading:
         """Returns the counters of the scene's port: its frames, and the site's other traffic."""
@@ -159,6 +184,12 @@ class Scene:
     def close(self) -> None:
         """Ends the scene."""
         self._closed = True
+
+
+def _write(octets: Octets, rows: Longs, at: Longs, values: Longs, width: int) -> None:
+    """Writes a number of so many octets into each row, the highest octet first."""
+    for octet in range(width):
+        octets[rows, at + octet] = values >> 8 * (width - 1 - octet) & 0xFF
 
 
 def _ns(seconds: Iterator[float]) -> Longs:
@@ -200,8 +231,10 @@ def _template(flow: Flow) -> bytes:
     if flow.payload_type < 0:
         content = flow.noise_octets
     else:
-        octets = story.PAYLOAD_OCTETS[flow.payload_type]
-        content = struct.pack("!BBHII", 0x80, flow.payload_type, 0, 0, flow.ssrc) + bytes(octets)
+        content = struct.pack("!BBHII", 0x80, flow.payload_type, 0, 0, flow.ssrc)
+        if flow.payload_type == story.EVENT:
+            content += bytes((story.DIGIT, story.VOLUME))
+        content = content.ljust(RTP_OCTETS + story.PAYLOAD_OCTETS[flow.payload_type], b"\0")
     udp = struct.pack("!HHHH", flow.source[1], flow.destination[1], 8 + len(content), 0) + content
     source, destination = ip_address(flow.source[0]), ip_address(flow.destination[0])
     if source.version == 4:

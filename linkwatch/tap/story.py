@@ -14,6 +14,8 @@ G729, PCMA, PCMU = 18, 8, 0
 EVENT = 101
 PAYLOAD_OCTETS = {G729: 20, PCMA: 160, PCMU: 160, EVENT: 4}  # 20 ms each (RFC 3551, RFC 4733)
 PACKET_MS, TICKS = 20, 160
+# RFC 4733 2.3 and 2.5.1.4: the key 5 at -10 dBm0; the end is told three times.
+DIGIT, VOLUME, ENDINGS = 5, 10, 3
 
 SITE, CENTRAL = "10.20.1.{}", "10.9.0.{}"
 SITE_IPV6, CENTRAL_IPV6 = "2001:db8:20::{}", "2001:db8:9::{}"
@@ -35,6 +37,7 @@ class Flow:
         pause_s: A stretch (from, to) in which it sends nothing.
         only_s: A stretch in which alone it sends, with one timestamp, as telephone events do.
         noise_ms, noise_octets: For what is no RTP: time between packets, octets of each.
+        changing: Which of these octets (from, to) change from packet to packet.
     """
 
     source: tuple[str, int]
@@ -51,6 +54,7 @@ class Flow:
     only_s: tuple[float, float] | None = None
     noise_ms: float = 0.0
     noise_octets: bytes = b""
+    changing: tuple[int, int] = (0, 0)
 
 
 @dataclass(frozen=True, slots=True)
@@ -159,21 +163,23 @@ def _of_call(call: Call, chance: Random) -> Iterator[Flow]:
 
 def _noise() -> Iterator[Flow]:
     """What passes a real link besides, and must not be taken for calls."""
-    names, clocks, games = (SITE.format(2), 53011), (SITE.format(3), 123), (SITE.format(4), 27311)
-    for flow, every_ms, octets in (
-        ((names, (CENTRAL.format(53), 53)), 900, b"\x81\x3c\x01\x00\x00\x01" + bytes(30)),
-        ((clocks, (CENTRAL.format(9), 123)), 4000, b"\x9b\x03\x06\xec" + bytes(44)),
-        ((games, (CENTRAL.format(77), 27015)), 50, b"\x80\x10" + bytes(58)),
-        (((SITE.format(5), 40001), (CENTRAL.format(78), 40002)), 30, b"\x80" + bytes(120)),
+    question = b"\x05depot\x07example\x00" + b"\x00\x01\x00\x01"  # its address (RFC 1035 4.1.2)
+    names = b"\x81\x3c\x01\x00\x00\x01" + bytes(6) + question  # what changes is the number
+    clocks = b"\x9b\x03\x06\xec" + bytes(44)  # what changes is the time sent (RFC 5905 7.3)
+    for phone, port, far, far_port, every_ms, octets, changing in (
+        (2, 53011, 53, 53, 900, names, (1, 2)),
+        (3, 123, 9, 123, 4000, clocks, (40, 48)),
+        (4, 27311, 77, 27015, 50, b"\x80\x10" + bytes(58), (2, 12)),  # a game, by the look of it
+        (5, 40001, 78, 40002, 30, b"\x80" + bytes(120), (1, 121)),  # nothing but chance
     ):
-        source, destination = flow
         yield Flow(
-            source,
-            destination,
+            (SITE.format(phone), port),
+            (CENTRAL.format(far), far_port),
             0,
             LENGTH_S,
             -1,
             dscp=UNMARKED,
             noise_ms=every_ms,
             noise_octets=octets,
+            changing=changing,
         )
