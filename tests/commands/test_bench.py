@@ -6,7 +6,7 @@ from collections import defaultdict
 import dpkt
 import pytest
 
-from linkwatch.commands.bench import print_bench, run_bench, write_capture
+from linkwatch.commands.bench import DECODERS, _timed, print_bench, run_bench, write_capture
 from linkwatch.errors import InputError
 
 
@@ -23,6 +23,7 @@ def test_our_speed_is_told_as_ratios_to_both_other_decoders(bench):
     assert (bench.streams, bench.packets, bench.missing) == (20, 50_000, ())
     assert set(bench.ratios) == set(bench.others) == {"dpkt", "scapy"}
     assert all(ratio > 0 for ratio in bench.ratios.values())
+    assert bench.samples == {"dpkt": 50_000, "scapy": 2_000}
     assert bench.read_ns > 0
     assert bench.help_s > 0
     assert bench.read_mb > 1
@@ -35,12 +36,23 @@ def test_the_text_puts_ratios_before_absolute_figures(bench):
     assert last_ratio < text.index("ns a packet")
     assert last_ratio < text.index("MB resident")
     assert all(name in text[: text.index("ns a packet")] for name in ("dpkt", "scapy"))
+    assert "over the first 2000" in text
 
 
 def test_a_decoder_that_is_not_installed_is_told_with_its_remedy(bench):
     """What is missing is said with the command that installs it."""
     text = print_bench(bench._replace(missing=("dpkt",)), as_json=False)
     assert "pip install dpkt" in text
+
+
+def test_a_decoder_that_cannot_be_imported_gives_no_figure(monkeypatch, tmp_path):
+    """A missing decoder leaves the rest of the bench standing."""
+
+    def missing(path, most):
+        raise ModuleNotFoundError("dpkt")
+
+    monkeypatch.setitem(DECODERS, "dpkt", missing)
+    assert _timed("dpkt", tmp_path) == []
 
 
 def test_the_machine_readable_answer_holds_every_figure(bench):
@@ -61,23 +73,25 @@ def test_sizes_that_make_no_bench_are_refused_in_one_line(streams, packets):
 
 
 def test_the_capture_holds_the_promised_streams_of_sound_packets(tmp_path):
-    """By dpkt: each stream is PCMU in steps of one packet and 160 ticks, two streams a call."""
+    """By dpkt: PCMU and G729 calls of two streams, in steps of one packet and 160 ticks."""
     write_capture(tmp_path / "a.pcap", 6, 420)
-    streams, times = defaultdict(list), []
+    streams, times, codecs = defaultdict(list), [], defaultdict(set)
     with (tmp_path / "a.pcap").open("rb") as file:
         for time, octets in dpkt.pcap.Reader(file):
             packet = dpkt.ethernet.Ethernet(octets).data
             udp = packet.data
             speech = dpkt.rtp.RTP(udp.data)
             assert (packet.len, udp.ulen) == (len(octets) - 14, len(octets) - 34)
-            assert (speech.version, speech.pt) == (2, 0)  # RFC 3551 table 4: PCMU is 0
-            assert len(speech.data) == 160  # 20 ms of 8000 samples a second
+            assert speech.version == 2
             key = (packet.src, udp.sport, packet.dst, udp.dport, speech.ssrc)
             streams[key].append((speech.seq, speech.ts, time))
             times.append(time)
+            codecs[key].add((speech.pt, len(speech.data)))
     assert times == sorted(times)
     assert len(streams) == 6
     assert len({frozenset([key[:2], key[2:4]]) for key in streams}) == 3
+    # RFC 3551 table 4: PCMU is 0 and G729 is 18; by 4.5.14 and 4.5.6, 8 and 1 octets a ms.
+    assert sorted(codecs.values(), key=str) == [{(0, 160)}] * 4 + [{(18, 20)}] * 2
     for packets in streams.values():
         assert len(packets) == 70
         for i, (sequence, timestamp, time) in enumerate(packets):
