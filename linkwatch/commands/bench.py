@@ -5,7 +5,6 @@ slow decoders read the beginning of the same capture, and are counted by the pac
 """
 
 import json
-import os
 import statistics
 import subprocess
 import sys
@@ -33,6 +32,11 @@ ETHERNET_OCTETS, IP_OCTETS, RECORD_OCTETS = 14, 20 + 8 + 12, 16
 LONGEST_OCTETS = RECORD_OCTETS + ETHERNET_OCTETS + IP_OCTETS + PCMU_OCTETS
 WRITTEN_AT_ONCE = 100_000
 START_S = 1_800_000_000
+ASK_PEAK = """
+import resource, subprocess, sys
+subprocess.run(sys.argv[1:], stdout=subprocess.DEVNULL, check=True)
+print(resource.getrusage(resource.RUSAGE_CHILDREN).ru_maxrss)
+"""
 
 
 class Bench(NamedTuple):
@@ -186,7 +190,9 @@ def _timed(name: str, path: Path) -> list[float]:
         DECODERS[name](path, WARM_UP_PACKETS)
         begin = time.perf_counter()
         packets = DECODERS[name](path, MOST_PACKETS[name])
-    except ImportError:
+    except ModuleNotFoundError as missing:
+        if missing.name != name:
+            raise
         return []
     return [(time.perf_counter() - begin) / packets * 1e9]
 
@@ -244,9 +250,16 @@ def _seconds_of(work: Callable[[], object]) -> float:
 
 def _read_mb(path: Path) -> float:
     """Returns the peak memory of a process of its own that reads the capture."""
-    command = [sys.executable, "-m", "linkwatch", "read", str(path), "--json"]
-    with subprocess.Popen(command, stdout=subprocess.DEVNULL) as process:
-        _, _, used = os.wait4(process.pid, 0)
-        process.returncode = 0
+    return _peak_mb([sys.executable, "-m", "linkwatch", "read", str(path), "--json"])
+
+
+def _peak_mb(command: list[str]) -> float:
+    """Returns the resident memory of a command at its peak.
+
+    A process inherits the peak of the one that starts it, so a small one starts it, not this one.
+    """
+    asked = subprocess.run(
+        [sys.executable, "-c", ASK_PEAK, *command], capture_output=True, check=True
+    )
     unit = 1 if sys.platform == "darwin" else 1024  # octets there, kilobytes elsewhere
-    return used.ru_maxrss * unit / 1e6
+    return int(asked.stdout) * unit / 1e6

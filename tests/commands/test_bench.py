@@ -1,12 +1,21 @@
 """The bench: what it answers, not how fast anything is."""
 
 import json
+import sys
 from collections import defaultdict
 
 import dpkt
+import numpy as np
 import pytest
 
-from linkwatch.commands.bench import DECODERS, _timed, print_bench, run_bench, write_capture
+from linkwatch.commands.bench import (
+    DECODERS,
+    _peak_mb,
+    _timed,
+    print_bench,
+    run_bench,
+    write_capture,
+)
 from linkwatch.errors import InputError
 
 
@@ -45,14 +54,28 @@ def test_a_decoder_that_is_not_installed_is_told_with_its_remedy(bench):
     assert "pip install dpkt" in text
 
 
-def test_a_decoder_that_cannot_be_imported_gives_no_figure(monkeypatch, tmp_path):
+def test_a_decoder_that_is_not_installed_gives_no_figure(monkeypatch, tmp_path):
     """A missing decoder leaves the rest of the bench standing."""
+    monkeypatch.setitem(sys.modules, "dpkt", None)
+    write_capture(tmp_path / "a.pcap", 2, 40)
+    assert _timed("dpkt", tmp_path / "a.pcap") == []
 
-    def missing(path, most):
-        raise ModuleNotFoundError("dpkt")
 
-    monkeypatch.setitem(DECODERS, "dpkt", missing)
-    assert _timed("dpkt", tmp_path) == []
+def test_a_fault_of_our_own_is_not_taken_for_a_missing_decoder(monkeypatch, tmp_path):
+    """An import that fails for another reason is not passed over."""
+
+    def broken(path, most):
+        raise ImportError("cannot import name", name="linkwatch")
+
+    monkeypatch.setitem(DECODERS, "read", broken)
+    with pytest.raises(ImportError):
+        _timed("read", tmp_path)
+
+
+def test_the_memory_of_a_command_is_its_own():
+    """What the bench itself holds is not counted as the command's."""
+    ballast = np.ones(25_000_000)  # 200 MB, every page of it touched
+    assert 1 < _peak_mb([sys.executable, "-c", "pass"]) < ballast.nbytes / 2e6
 
 
 def test_the_machine_readable_answer_holds_every_figure(bench):
