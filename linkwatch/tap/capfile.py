@@ -17,7 +17,7 @@ import numpy as np
 
 from linkwatch.errors import CaptureError
 from linkwatch.frames import CounterReading, FrameBatch, LinkType, TapStatistics
-from linkwatch.tap.records import LONGEST_BLOCK, Frames, Pcapng, format_of
+from linkwatch.tap.records import LONGEST_BLOCK, Frames, format_of, known_link_type
 
 PIECE = 4 << 20  # octets read at once: they stay in the processor's cache until they are used
 HEAD = 24  # octets that tell the format
@@ -43,7 +43,7 @@ class CaptureFile:
         # One buffer for all pieces: fresh memory for each would cost as much as the reading.
         self._buffer = bytearray(PIECE + SLACK)
         self._filled = 0
-        self._frames = self._octets = 0
+        self._frames = self._octets = self._read = 0
         self._until = 0
         self._remarks: list[str] = []
         self._closed = False
@@ -59,9 +59,9 @@ class CaptureFile:
 
     def _head(self) -> bytes:
         """Reads as far as it takes to tell the format."""
-        while self._filled < HEAD and self._fill():
+        while self._filled < HEAD and self._fill(HEAD):
             pass
-        return bytes(memoryview(self._buffer)[: min(HEAD, self._filled)])
+        return bytes(memoryview(self._buffer)[: self._filled])
 
     @property
     def name(self) -> str:
@@ -71,15 +71,13 @@ class CaptureFile:
     @property
     def progress(self) -> float:
         """How much of the file is read, 0 to 1; 0 where its length is not known."""
-        if not self._size:
-            return 0.0
-        return min(1.0, self._file.tell() / self._size)
+        return min(1.0, self._read / self._size) if self._size else 0.0
 
     def batches(self) -> Iterator[FrameBatch]:
         """Yields the frames in the order of the file, a few MB at a time."""
         begins = self._records_at
         while not self._closed:
-            more = self._fill()
+            more = self._fill(len(self._buffer) - SLACK)
             place, piece = 0, memoryview(self._buffer)[: self._filled]
             while True:
                 found = self._format.find(piece, place)
@@ -107,13 +105,13 @@ class CaptureFile:
         self._closed = True
         self._file.close()
 
-    def _fill(self) -> bool:
-        """Reads on into the buffer; a pipe only as far as there is something.
+    def _fill(self, limit: int) -> bool:
+        """Reads on into the buffer, up to `limit`; a pipe only as far as there is something.
 
         Returns whether anything came. Where the file cannot be read on, that is its end, with a
         remark.
         """
-        room = memoryview(self._buffer)[: len(self._buffer) - SLACK]
+        room = memoryview(self._buffer)[:limit]
         before = self._filled
         try:
             while self._filled < len(room):
@@ -121,6 +119,8 @@ class CaptureFile:
                 self._filled += got
                 if not got or not self._size:
                     break
+            if self._size:
+                self._read = self._file.tell()
         except (OSError, EOFError, zlib.error, ValueError) as error:
             if not self._closed:
                 self._remarks.append(f"{self._name} cannot be read to its end: {error}")
@@ -168,10 +168,15 @@ class CaptureFile:
             self._remarks.append(
                 f"cut off in the middle of a frame at octet {place}; the frames before it are used"
             )
-        if isinstance(self._format, Pcapng) and self._format.left_out:
-            self._remarks.append(
-                f"{self._format.left_out} frames of link types that cannot be read are left out"
-            )
+        unreadable = self._format.left_out
+        if unreadable and not self._frames:
+            known_link_type(min(unreadable), self._name)
+        self._remarks += [
+            f"{frames} frames of link type {number} cannot be read and are left out"
+            for number, frames in sorted(unreadable.items())
+        ]
+        if self._format.damaged:
+            self._remarks.append(f"{self._format.damaged} damaged frames are left out")
 
 
 def _open(path: Path, name: str) -> tuple[BufferedReader, int]:

@@ -6,17 +6,21 @@ Capture File Format".
 """
 
 import struct
-from dataclasses import dataclass
-from typing import NamedTuple, Protocol, cast
+from collections import Counter
+from dataclasses import dataclass, field
+from typing import NamedTuple, Protocol, TypeAlias, cast
 
 import numpy as np
+import numpy.typing as npt
 
 from linkwatch.errors import CaptureError
 from linkwatch.frames import LinkType, Longs, Octets, Rows, gather
-from linkwatch.tap.walk import HEAD as PCAP_RECORD
-from linkwatch.tap.walk import LONGEST_FRAME, records
+from linkwatch.tap.walk import Chain, records
+
+Mask: TypeAlias = npt.NDArray[np.bool_]
 
 SECOND_NS = 1_000_000_000
+LONGEST_FRAME = 256 << 10  # octets; no link carries frames so long, so a longer one is corrupt
 ALSO_RAW = {12, 14}  # values that some systems write for raw IP
 
 
@@ -37,6 +41,9 @@ class Frames(NamedTuple):
     link_type: Longs
 
 
+NOTHING = Frames(*(np.empty(0, np.int64) for _ in Frames._fields))
+
+
 class Found(NamedTuple):
     """What was found in a piece of a capture.
 
@@ -52,7 +59,15 @@ class Found(NamedTuple):
 
 
 class Format(Protocol):
-    """A capture format, with what it has learned of the file so far."""
+    """A capture format, with what it has learned of the file so far.
+
+    Attributes:
+        left_out: Frames of link types that cannot be read, by the type's number.
+        damaged: Frames whose lengths or interfaces cannot be.
+    """
+
+    left_out: Counter[int]
+    damaged: int
 
     def find(self, piece: memoryview, place: int) -> Found:
         """Returns the frames from a place in a piece on; a little room follows the piece.
@@ -103,7 +118,19 @@ def known_link_type(number: int, name: str) -> int:
 
 # -- pcap --------------------------------------------------------------------------------------
 
-PCAP_HEAD = 24
+PCAP_HEAD, PCAP_RECORD = 24, 16
+# A record's head is seconds, part of a second, octets captured and original. The upper half of the
+# seconds stays the same for 18 hours.
+PCAP_CHAIN = Chain(
+    length_at=8,
+    uncounted=PCAP_RECORD,
+    least=PCAP_RECORD,
+    longest=PCAP_RECORD + LONGEST_FRAME,
+    multiple=1,
+    head=PCAP_RECORD,
+    alike=0xFFFF0000,
+    common=(3, 2),
+)
 PCAP_UNITS = {0xA1B2C3D4: 1000, 0xA1B23C4D: 1}  # nanoseconds of the second time field's unit
 
 
@@ -115,15 +142,18 @@ class Pcap:
         order: "<" or ">".
         unit_ns: Nanoseconds of a unit of the second time field.
         link_type: Of all frames.
+        left_out, damaged: See `Format`; none here, where every record is a frame.
     """
 
     order: str
     unit_ns: int
     link_type: int
+    left_out: Counter[int] = field(default_factory=Counter)
+    damaged: int = 0
 
     def find(self, piece: memoryview, place: int) -> Found:
         """See `Format`."""
-        places, place, corrupt = records(piece, place, self.order)
+        places, place, corrupt = records(piece, place, self.order, PCAP_CHAIN)
         fault = "no record's head" if corrupt else ""
         return Found(self._frames(piece, places), place, fault)
 
@@ -149,6 +179,17 @@ SECTION, INTERFACE, OLD_PACKET, SIMPLE_PACKET, PACKET = 0x0A0D0D0A, 1, 2, 3, 6
 LITTLE, BIG = b"\x4d\x3c\x2b\x1a", b"\x1a\x2b\x3c\x4d"
 BLOCK_FRAME, BLOCK_LEAST = 8, 12  # octets before a block's body; and of an empty block
 LONGEST_BLOCK = 16 << 20  # octets; no known block comes near it
+# A block's head is its kind and its length; nearly all blocks are packets.
+BLOCK_CHAIN = Chain(
+    length_at=4,
+    uncounted=0,
+    least=BLOCK_LEAST,
+    longest=LONGEST_BLOCK,
+    multiple=4,
+    head=BLOCK_FRAME,
+    alike=0xFFFFFFFF,
+    common=(0, 1),
+)
 PACKET_HEAD, SIMPLE_HEAD = 20, 4
 RESOLUTION, OFFSET = 9, 14  # options of an interface
 MICROSECONDS = 6  # the resolution where none is told
@@ -159,13 +200,15 @@ class Interface(NamedTuple):
     """What an interface description says.
 
     Attributes:
-        link_type: Its number, -1 for frames we cannot read.
+        link_type: Its number.
+        readable: Whether we can read such frames.
         snaplen: Octets captured at most, 0 for no limit.
         resolution: Of its times, as the option has it: a power of ten, or of two with bit 7.
         offset_s: Seconds to add.
     """
 
     link_type: int
+    readable: bool
     snaplen: int
     resolution: int = MICROSECONDS
     offset_s: int = 0
@@ -196,69 +239,82 @@ class Pcapng:
         self._order = "<"
         self._interfaces: list[Interface] = []
         self._last_time = 0
-        self.left_out = 0
+        self.left_out: Counter[int] = Counter()
+        self.damaged = 0
 
     def find(self, piece: memoryview, place: int) -> Found:
-        """See `Format`; a section or an interface changes what follows means, and ends a find."""
-        places: list[int] = []
-        fault = ""
+        """See `Format`; a section of the other byte order ends a find."""
         order = self._order_at(piece, place)
-        block_at = struct.Struct(f"{order}II").unpack_from
-        while place + BLOCK_LEAST <= len(piece):
-            kind, length = block_at(piece, place)
-            if kind == SECTION and places:
-                break
-            if not order or length < BLOCK_LEAST or length % 4 or length > LONGEST_BLOCK:
-                fault = "no block's head"
-                break
-            if place + length > len(piece):
-                break
-            if kind == PACKET or kind in (OLD_PACKET, SIMPLE_PACKET):
-                places.append(place)
-            elif kind in (SECTION, INTERFACE):
-                if places:
+        if not order:
+            known = len(piece) - place >= BLOCK_LEAST
+            return Found(NOTHING, place, "no section's head" if known else "")
+        blocks, used, corrupt = records(piece, place, order, BLOCK_CHAIN)
+        fault = "no block's head" if corrupt and self._order_at(piece, used) == order else ""
+        kinds = gather(_with_room(piece), blocks, np.dtype(f"{order}u4"))
+        begin = np.flatnonzero(kinds == SECTION)
+        parts = [NOTHING]
+        for start, stop in zip((0, *begin), (*begin, len(blocks)), strict=True):
+            if start < stop and kinds[start] == SECTION:
+                if self._order_at(piece, blocks[start]) != order:
+                    used, fault = int(blocks[start]), ""
                     break
-                fault = self._learn(kind, order, bytes(piece[place : place + length]))
-                if fault:
-                    break
-                order = self._order
-                block_at = struct.Struct(f"{order}II").unpack_from
-            place += length
-        return Found(self._frames(piece, np.array(places, np.int64)), place, fault)
+                self._order, self._interfaces = order, []
+            found = self._section(piece, blocks[start:stop], kinds[start:stop])
+            parts.append(found.frames)
+            if found.fault:
+                used, fault = found.used, found.fault
+                break
+        frames = Frames(*map(np.concatenate, zip(*parts, strict=True)))
+        return Found(frames, used, fault)
+
+    def _section(self, piece: memoryview, blocks: Longs, kinds: Rows) -> Found:
+        """Returns the frames of one section's blocks; `used` counts only with a fault."""
+        used, fault = len(piece), ""
+        described, before = blocks[kinds == INTERFACE], len(self._interfaces)
+        for at in described.tolist():
+            if not self._learn_interface(piece, at):
+                used, fault = at, "an interface that cannot be"
+                break
+        is_packet = (kinds == PACKET) | (kinds == SIMPLE_PACKET) | (kinds == OLD_PACKET)
+        packets = blocks[is_packet & (blocks < used)]
+        if not len(packets):
+            return Found(NOTHING, used, fault)
+        known = before + np.searchsorted(described, packets)
+        return Found(self._frames(piece, packets, known), used, fault)
 
     def _order_at(self, piece: memoryview, place: int) -> str:
-        """Returns the byte order of the block there; a section head tells a new one."""
+        """Returns the byte order of the block there; a section's head tells a new one, or none."""
         if piece[place : place + 4] != SECTION_MAGIC:
             return self._order
         return {LITTLE: "<", BIG: ">"}.get(bytes(piece[place + 8 : place + 12]), "")
 
-    def _learn(self, kind: int, order: str, block: bytes) -> str:
-        """Takes in a section or an interface; returns what is wrong with it."""
-        if kind == SECTION:
-            self._order, self._interfaces = order, []
-            return ""
-        if len(block) < BLOCK_LEAST + 8 or len(self._interfaces) >= MOST_INTERFACES:
-            return "an interface that cannot be"
-        number, _, snaplen = struct.unpack_from(order + "HHI", block, BLOCK_FRAME)
+    def _learn_interface(self, piece: memoryview, at: int) -> bool:
+        """Takes in an interface's description; returns whether it can be one."""
+        order = self._order
+        length = struct.unpack_from(order + "I", piece, at + 4)[0]
+        if length < BLOCK_LEAST + 8 or len(self._interfaces) >= MOST_INTERFACES:
+            return False
+        number, _, snaplen = struct.unpack_from(order + "HHI", piece, at + BLOCK_FRAME)
         try:
-            link_type = known_link_type(number, self._name)
+            link_type, readable = known_link_type(number, self._name), True
         except CaptureError:
-            link_type = -1
-        options = _options(order, block[BLOCK_FRAME + 8 : -4])
-        resolution = options.get(RESOLUTION, bytes([MICROSECONDS]))[:1]
+            link_type, readable = number, False
+        options = _options(order, bytes(piece[at + BLOCK_FRAME + 8 : at + length - 4]))
+        resolution = options.get(RESOLUTION, b"")[:1] or bytes([MICROSECONDS])
         offset = options.get(OFFSET, bytes(8))
         offset_s = struct.unpack(order + "q", offset)[0] if len(offset) == 8 else 0
-        unit = resolution[0] if resolution else MICROSECONDS
         far = abs(offset_s) > 1 << 33  # beyond any year that nanoseconds can tell
-        self._interfaces.append(Interface(link_type, snaplen, unit, 0 if far else offset_s))
-        return ""
+        self._interfaces.append(
+            Interface(link_type, readable, snaplen, resolution[0], 0 if far else offset_s)
+        )
+        return True
 
-    def _frames(self, piece: memoryview, places: Longs) -> Frames:
+    def _frames(self, piece: memoryview, places: Longs, known: Longs) -> Frames:
+        """Returns the frames of packets, at whose places so many interfaces were known."""
         four = np.dtype(f"{self._order}u4")
         names = ("kind", "length", "interface", "high", "low", "captured", "original")
         # A simple packet's block may be shorter than the head of the others.
-        octets = _with_room(piece)
-        head = gather(octets, places, np.dtype([(n, four) for n in names]))
+        head = gather(_with_room(piece), places, np.dtype([(n, four) for n in names]))
         simple = head["kind"] == SIMPLE_PACKET
         interface = head["interface"].astype(np.int64)
         # The older packet block has 16 bits of interface, then 16 of drops.
@@ -277,17 +333,33 @@ class Pcapng:
             limit = self._interfaces[0].snaplen if self._interfaces else 0
             captured[simple] = np.minimum(original[simple], limit or LONGEST_FRAME)
             captured[simple] = np.minimum(captured[simple], room[simple])
-        times, link_type = np.zeros(len(places), np.int64), np.full(len(places), -1)
-        for number, known in enumerate(self._interfaces):
-            of = interface == number
-            times[of] = known.nanoseconds(ticks[of])
-            link_type[of] = known.link_type
-        times[simple] = self._last_time  # the simple block tells no time
-        right = (captured <= room) & (captured <= LONGEST_FRAME) & (link_type >= 0)
-        self.left_out += int(np.count_nonzero(~right))
-        if right.any():
-            self._last_time = int(times[right][-1])
-        return Frames(at[right], captured[right], original[right], times[right], link_type[right])
+        sound = (captured <= room) & (captured <= LONGEST_FRAME) & (interface < known)
+        self.damaged += int(np.count_nonzero(~sound))
+        times, link_type = np.zeros(len(places), np.int64), np.zeros(len(places), np.int64)
+        for number in np.flatnonzero(np.bincount(interface[sound])).tolist():
+            of, its = sound & (interface == number), self._interfaces[number]
+            times[of] = its.nanoseconds(ticks[of])
+            link_type[of] = its.link_type
+            if not its.readable:
+                self.left_out[its.link_type] += int(np.count_nonzero(of))
+                sound &= ~of
+        keep = slice(None) if sound.all() else sound
+        return Frames(
+            at[keep],
+            captured[keep],
+            original[keep],
+            self._timed(times[keep], simple[keep]),
+            link_type[keep],
+        )
+
+    def _timed(self, times: Longs, simple: Mask) -> Longs:
+        """Returns the times, with those before them for simple packets, which tell none."""
+        if simple.any():
+            last = np.maximum.accumulate(np.where(simple, -1, np.arange(len(times))))
+            times = np.where(last < 0, self._last_time, times[last])
+        if len(times):
+            self._last_time = int(times[-1])
+        return times
 
 
 def _options(order: str, octets: bytes) -> dict[int, bytes]:

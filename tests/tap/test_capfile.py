@@ -79,6 +79,15 @@ def pcapng(frames, order="<", resolution=None, link_type=1, simple=False, offset
     return file
 
 
+def packet(order, interface, ticks, octets):
+    """Returns an enhanced packet block's body."""
+    lengths = (len(octets), len(octets))
+    return struct.pack(order + "IIIII", interface, ticks >> 32, ticks % 2**32, *lengths) + octets
+
+
+NANO = {order: struct.pack(order + "HHB3xI", 9, 1, 9, 0) for order in "<>"}
+
+
 @pytest.mark.parametrize("order", ["<", ">"])
 @pytest.mark.parametrize("nano", [True, False])
 def test_pcap_is_read_in_both_orders_and_units(tmp_path, order, nano):
@@ -134,7 +143,98 @@ def test_frames_of_an_unknown_link_type_are_left_out_and_it_is_said(tmp_path):
     (tmp_path / "a.pcapng").write_bytes(file)
     got, remarks = read(tmp_path / "a.pcapng")
     assert len(got) == len(FRAMES)
-    assert "2 frames of link types that cannot be read" in remarks[0]
+    assert remarks == ("2 frames of link type 147 cannot be read and are left out",)
+
+
+def test_a_capture_of_unknown_link_types_alone_names_them(tmp_path):
+    """Where no frame can be read, the error names the number, as for pcap."""
+    (tmp_path / "a.pcapng").write_bytes(pcapng(FRAMES, link_type=147))
+    with pytest.raises(CaptureError, match="link type 147"):
+        read(tmp_path / "a.pcapng")
+
+
+@pytest.mark.parametrize("order", ["<", ">"])
+def test_interfaces_of_several_link_types_take_turns(tmp_path, order):
+    """Frames keep their order, and each has the link type and the unit of its interface."""
+    file = pcapng([], order) + block(order, 1, struct.pack(order + "HHI", 101, 0, 0) + NANO[order])
+    wanted = []
+    for i, (time, octets) in enumerate(FRAMES):
+        raw = i % 2
+        kept = octets[14:] if raw else octets
+        file += block(order, 6, packet(order, raw, time if raw else time // 1000, kept))
+        wanted.append((time if raw else time // 1000 * 1000, kept, len(kept), 101 if raw else 1))
+    (tmp_path / "a.pcapng").write_bytes(file)
+    assert read(tmp_path / "a.pcapng") == (wanted, ())
+
+
+@pytest.mark.parametrize("order", ["<", ">"])
+def test_the_older_packet_blocks_are_read(tmp_path, order):
+    """They have 16 bits of interface and 16 of drops, which are no part of its number."""
+    file = pcapng([], order)
+    for time, octets in FRAMES:
+        head = struct.pack(order + "HH", 0, 5) + packet(order, 0, time // 1000, octets)[4:]
+        file += block(order, 2, head)
+    (tmp_path / "a.pcapng").write_bytes(file)
+    got, _ = read(tmp_path / "a.pcapng")
+    assert [o for _, o, _, _ in got] == [o for _, o in FRAMES]
+
+
+def test_a_packet_that_tells_no_time_has_that_of_the_one_before(tmp_path):
+    """Simple packets among others never let time go back."""
+    simple = block("<", 3, struct.pack("<I", 5) + b"abcde")
+    file = pcapng([]) + block("<", 6, packet("<", 0, FRAMES[0][0] // 1000, b"x" * 60)) + simple * 2
+    (tmp_path / "a.pcapng").write_bytes(file)
+    got, _ = read(tmp_path / "a.pcapng")
+    assert [o[:5] for _, o, _, _ in got] == [b"x" * 5, b"abcde", b"abcde"]
+    assert len({t for t, *_ in got}) == 1
+
+
+def test_packets_that_contradict_themselves_are_left_out_and_counted(tmp_path):
+    """A length beyond its block, and an interface that is described later, cannot be."""
+    time, octets = FRAMES[0]
+    early = block("<", 6, packet("<", 1, time // 1000, octets))
+    too_long = block("<", 6, struct.pack("<IIIII", 0, 0, 0, len(octets) + 99, 0) + octets)
+    late = block("<", 1, struct.pack("<HHI", 1, 0, 0))
+    (tmp_path / "a.pcapng").write_bytes(pcapng(FRAMES) + early + too_long + late)
+    got, remarks = read(tmp_path / "a.pcapng")
+    assert len(got) == len(FRAMES)
+    assert remarks == ("2 damaged frames are left out",)
+
+
+@pytest.mark.parametrize("make", [pcap, pcapng])
+def test_garbage_in_the_middle_costs_no_frame_before_it(tmp_path, make):
+    """What stands before is delivered, and a remark says where reading ended."""
+    whole = make(FRAMES)
+    (tmp_path / "a").write_bytes(whole + b"\xff" * 500 + whole[24:])
+    got, remarks = read(tmp_path / "a")
+    assert [o for _, o, _, _ in got] == [o for _, o in FRAMES]
+    assert f"damaged at octet {len(whole)}" in remarks[0]
+
+
+def test_a_file_that_shrinks_while_it_is_read_is_cut_off(tmp_path):
+    """What was there is delivered, and the rest is told as missing."""
+    path = tmp_path / "a"
+    path.write_bytes(pcap(FRAMES) + pcap(FRAMES)[24:] * 2999)
+    with closing(CaptureFile(path)) as tap:
+        batches = tap.batches()
+        frames = len(next(batches))
+        os.truncate(path, 100)
+        frames += sum(len(batch) for batch in batches)
+        assert 0 < frames < 3000 * len(FRAMES)
+        assert "cut off" in tap.statistics().remarks[0]
+
+
+def test_progress_runs_from_nothing_to_all(tmp_path):
+    """How much is read rises to 1, in a packed file as well, and is known to the end."""
+    long = pcap(FRAMES) + pcap(FRAMES)[24:] * 2999
+    (tmp_path / "a").write_bytes(long)
+    (tmp_path / "a.gz").write_bytes(gzip.compress(long, 1))
+    for name in ("a", "a.gz"):
+        tap = CaptureFile(tmp_path / name)
+        seen = [tap.progress, *(tap.progress for _ in tap.batches())]
+        tap.close()
+        assert seen == sorted(seen)
+        assert seen[0] < tap.progress == 1.0
 
 
 def test_what_dpkt_writes_is_read(tmp_path):

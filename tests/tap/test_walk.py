@@ -8,6 +8,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from linkwatch.tap import walk
+from linkwatch.tap.records import BLOCK_CHAIN, PCAP_CHAIN
 
 
 def piece_of(lengths, order, seconds=1_800_000_000, fill=0):
@@ -26,6 +27,8 @@ def small(monkeypatch):
     monkeypatch.setattr(walk, "SEARCH", 300)
     monkeypatch.setattr(walk, "MARGIN", 3000)
     monkeypatch.setattr(walk, "LEAST", 12_000)
+    monkeypatch.setattr(walk, "WORTH_IT", 2)
+    monkeypatch.setattr(walk, "PROBE", 200)
 
 
 @pytest.mark.usefixtures("small")
@@ -42,11 +45,75 @@ def test_many_walks_find_what_one_walk_finds(lengths, order, fill, cut, damage):
     piece = bytearray(piece_of(lengths, order, fill=fill))
     if damage:
         piece[damage[0] % len(piece)] = damage[1]
-    piece = bytes(piece[: len(piece) - cut])
-    places, end, corrupt = walk.records(piece, 0, order)
-    plain_places, plain_end, plain_corrupt = walk._one_walk(piece, 0, order)
+    piece = memoryview(bytes(piece[: len(piece) - cut]))
+    places, end, corrupt = walk.records(piece, 0, order, PCAP_CHAIN)
+    plain_places, plain_end, plain_corrupt = walk._one_walk(piece, 0, order, PCAP_CHAIN)
     assert places.tolist() == plain_places.tolist()
     assert (end, corrupt) == (plain_end, plain_corrupt)
+
+
+def blocks_of(lengths, order, kinds):
+    """Returns pcapng blocks, nearly all of them packets."""
+    blocks = []
+    for i, length in enumerate(lengths):
+        size = 12 + (length + 3) // 4 * 4
+        head, tail = (
+            struct.pack(f"{order}II", kinds.get(i, 6), size),
+            struct.pack(f"{order}I", size),
+        )
+        blocks.append(head + bytes([i % 7]) * (size - 12) + tail)
+    return b"".join(blocks)
+
+
+@pytest.mark.usefixtures("small")
+@settings(max_examples=150)
+@given(
+    lengths=st.lists(st.integers(0, 900), min_size=60, max_size=160),
+    order=st.sampled_from("<>"),
+    kinds=st.dictionaries(st.integers(0, 160), st.integers(0, 7), max_size=5),
+    damage=st.one_of(st.none(), st.tuples(st.integers(0, 10**6), st.integers(0, 255))),
+)
+def test_many_walks_find_the_blocks_that_one_walk_finds(lengths, order, kinds, damage):
+    """Blocks of any kind are stepped over, and one of an impossible length ends both."""
+    piece = bytearray(blocks_of(lengths, order, kinds))
+    if damage:
+        piece[damage[0] % len(piece)] = damage[1]
+    many = walk.records(memoryview(piece), 0, order, BLOCK_CHAIN)
+    with pytest.MonkeyPatch.context() as alone:
+        alone.setattr(walk, "LEAST", len(piece) + 1)
+        one = walk.records(memoryview(piece), 0, order, BLOCK_CHAIN)
+    assert many[0].tolist() == one[0].tolist()
+    assert many[1:] == one[1:]
+
+
+@pytest.mark.parametrize("longer", [0, 1])
+@pytest.mark.parametrize("behind", [0, 2 << 20])
+def test_a_record_longer_than_any_frame_is_corrupt_wherever_a_piece_ends(longer, behind):
+    """The longest frame is let pass and one octet more is refused, however much follows it."""
+    length = PCAP_CHAIN.longest - PCAP_CHAIN.head + longer
+    piece = piece_of([60] * 9 + [length], "<")
+    piece += piece_of([200] * (behind // 216), "<")
+    if not behind:
+        piece = piece[:-1]
+    places, end, corrupt = walk.records(memoryview(piece), 0, "<", PCAP_CHAIN)
+    assert corrupt is bool(longer)
+    if longer or not behind:
+        assert (len(places), end) == (9, 9 * 76)
+    else:
+        assert end == len(piece)
+
+
+@pytest.mark.parametrize("order", ["<", ">"])
+def test_many_walks_do_nearly_all_the_work(order):
+    """In a long piece of speech only the margin at its end is left to the one walk."""
+    lengths = [74 + 20 * (i % 9) for i in range(14_000)]
+    for piece, chain in (
+        (piece_of(lengths, order, fill=None), PCAP_CHAIN),
+        (blocks_of(lengths, order, {}), BLOCK_CHAIN),
+    ):
+        octets = np.frombuffer(piece, np.uint8)
+        _, left = walk._many_walks(octets, 0, order, chain)
+        assert len(piece) - left < 2 * walk.MARGIN
 
 
 @pytest.mark.usefixtures("small")
@@ -56,5 +123,5 @@ def test_frames_that_hold_records_mislead_nobody():
     piece = b"".join(
         struct.pack("<IIII", 1_800_000_000, i, len(inner), len(inner)) + inner for i in range(40)
     )
-    places, _, _ = walk.records(piece, 0, "<")
+    places, _, _ = walk.records(piece, 0, "<", PCAP_CHAIN)
     assert places.tolist() == [i * (16 + len(inner)) for i in range(40)]
