@@ -22,6 +22,7 @@ from linkwatch.tap.records import LONGEST_BLOCK, Frames, format_of, known_link_t
 PIECE = 4 << 20  # octets read at once: they stay in the processor's cache until they are used
 HEAD = 24  # octets that tell the format
 SLACK = 64  # octets behind a piece that a head may be gathered into
+GROUPED_NS = 100_000_000  # ticks lie on such whiles' ends, unless somebody asks for odd ones
 GZIP_MAGIC = b"\x1f\x8b"
 STANDARD_INPUT = "-"
 
@@ -140,12 +141,18 @@ class CaptureFile:
         if not len(frames.at):
             return
         octets = np.frombuffer(self._buffer, np.uint8)
-        changes = np.flatnonzero(np.diff(frames.link_type)) + 1
+        frames = _grouped(frames)
+        changes = (np.flatnonzero(np.diff(frames.link_type)) + 1).tolist()
+        so_far = np.maximum.accumulate(frames.times)
+        to_come = np.minimum.accumulate(frames.times[::-1])[::-1]
         for start, stop in zip((0, *changes), (*changes, len(frames.at)), strict=True):
             part = slice(start, stop)
-            self._frames += int(stop - start)
+            self._frames += stop - start
             self._octets += int(frames.original[part].sum())
-            self._until = max(self._until, int(frames.times[part].max()) + 1)
+            until = int(so_far[stop - 1]) + 1
+            if stop < len(to_come):
+                until = min(until, int(to_come[stop]))
+            self._until = max(self._until, until)
             yield FrameBatch(
                 octets,
                 frames.at[part],
@@ -177,6 +184,18 @@ class CaptureFile:
         ]
         if self._format.damaged:
             self._remarks.append(f"{self._format.damaged} damaged frames are left out")
+
+
+def _grouped(frames: Frames) -> Frames:
+    """Returns frames of several link types so that those of a short while lie together by type.
+
+    Otherwise interfaces that take turns would make a batch of every frame.
+    """
+    if (frames.link_type == frames.link_type[0]).all():
+        return frames
+    while_of = np.maximum.accumulate(frames.times) // GROUPED_NS
+    order = np.lexsort((frames.link_type, while_of))
+    return Frames(*(column[order] for column in frames))
 
 
 def _open(path: Path, name: str) -> tuple[BufferedReader, int]:

@@ -6,6 +6,7 @@ import struct
 import threading
 import warnings
 from contextlib import closing
+from itertools import pairwise
 from pathlib import Path
 
 import dpkt
@@ -155,7 +156,7 @@ def test_a_capture_of_unknown_link_types_alone_names_them(tmp_path):
 
 @pytest.mark.parametrize("order", ["<", ">"])
 def test_interfaces_of_several_link_types_take_turns(tmp_path, order):
-    """Frames keep their order, and each has the link type and the unit of its interface."""
+    """Each frame has the link type and the unit of its interface, and none is too late."""
     file = pcapng([], order) + block(order, 1, struct.pack(order + "HHI", 101, 0, 0) + NANO[order])
     wanted = []
     for i, (time, octets) in enumerate(FRAMES):
@@ -164,7 +165,14 @@ def test_interfaces_of_several_link_types_take_turns(tmp_path, order):
         file += block(order, 6, packet(order, raw, time if raw else time // 1000, kept))
         wanted.append((time if raw else time // 1000 * 1000, kept, len(kept), 101 if raw else 1))
     (tmp_path / "a.pcapng").write_bytes(file)
-    assert read(tmp_path / "a.pcapng") == (wanted, ())
+    got, remarks = read(tmp_path / "a.pcapng")
+    assert sorted(got) == wanted
+    assert remarks == ()
+    with closing(CaptureFile(tmp_path / "a.pcapng")) as tap:
+        batches = [(batch.times.min(), batch.until) for batch in tap.batches()]
+    assert len(batches) < len(FRAMES)
+    assert all(until <= first for (_, until), (first, _) in pairwise(batches))
+    assert batches[-1][1] == wanted[-1][0] + 1
 
 
 @pytest.mark.parametrize("order", ["<", ">"])
