@@ -5,6 +5,7 @@ kernel fills blocks, and hands one over when it is full or has waited long enoug
 it on as one batch, and give it back.
 """
 
+import contextlib
 import errno
 import fcntl
 import mmap
@@ -13,6 +14,7 @@ import socket
 import struct
 import time
 from collections.abc import Iterator
+from typing import NamedTuple
 
 import numpy as np
 
@@ -52,8 +54,13 @@ NOT_YET_NS = 3 * HAND_OVER_MS * 1_000_000
 WAIT_MS = 200
 
 GET_HARDWARE, GET_MTU = 0x8927, 0x8921
-LINK_TYPES = {1: LinkType.ETHERNET, 772: LinkType.ETHERNET, 65534: LinkType.RAW, 519: LinkType.RAW}
+# Kinds of hardware, as linux/if_arp.h numbers them.
 LOOPBACK = 772
+ETHERNETS = (1, LOOPBACK)
+RAW_IP = (519, 65534)
+# PPP, and IP in IP, in IPv6 and in GRE: their own headers vary, so the kernel hands over from the
+# IP packet on.
+TUNNELS = (512, 768, 769, 776, 778, 823)
 ROOM_FOR_HEADER = 14 + 2 * VLAN_TAG
 
 
@@ -81,29 +88,41 @@ class PacketRing:
         self._open()
 
     def _open(self) -> None:
-        tap = socket.socket(socket.AF_PACKET, socket.SOCK_RAW, 0)
+        self._link_type, kind, self._longest, is_loopback = _facts(self._name)
+        tap = socket.socket(socket.AF_PACKET, kind, 0)
         try:
-            hardware, self._longest = _facts(tap, self._name)
-            self._link_type = _link_type(self._name, hardware)
             tap.setsockopt(SOL_PACKET, VERSION, VERSION_3)
             frames = BLOCKS * BLOCK_OCTETS // FRAME_OCTETS
             ring = (BLOCK_OCTETS, BLOCKS, FRAME_OCTETS, frames, HAND_OVER_MS, 0, 0)
             tap.setsockopt(SOL_PACKET, RX_RING, struct.pack("7I", *ring))
             close_gate(tap, headers_only(ethernet=self._link_type is LinkType.ETHERNET))
-            if hardware == LOOPBACK:  # there every frame would show twice, going and coming
+            if is_loopback:  # there every frame would show twice, going and coming
                 tap.setsockopt(SOL_PACKET, IGNORE_OUTGOING, 1)
             memory = mmap.mmap(tap.fileno(), BLOCKS * BLOCK_OCTETS)
+            self._socket = tap
             # Until here the socket belongs to no protocol, so nothing can have come in unfiltered.
-            tap.bind((self._name, EVERY_PROTOCOL))
-            member = struct.pack("iHH8x", socket.if_nametoindex(self._name), PROMISCUOUS, 0)
-            tap.setsockopt(SOL_PACKET, ADD_MEMBERSHIP, member)
+            self._listen(socket.if_nametoindex(self._name))
         except BaseException:
             tap.close()
             raise
-        self._socket = tap
         self._block = 0  # the one to be handed over next
         self._words = memoryview(memory).cast("I")
         self._memory = np.frombuffer(memory, np.uint8)
+
+    def _listen(self, index: int) -> None:
+        """Binds the socket to the port that has this index now."""
+        self._socket.bind((self._name, EVERY_PROTOCOL))
+        member = struct.pack("iHH8x", index, PROMISCUOUS, 0)
+        self._socket.setsockopt(SOL_PACKET, ADD_MEMBERSHIP, member)
+        self._index = index
+
+    def _look_for_port(self) -> None:
+        """Listens again where the port has vanished and come back; that takes no right."""
+        with contextlib.suppress(OSError, TapError):  # not there: looked for again in a moment
+            index = socket.if_nametoindex(self._name)
+            if index != self._index and _facts(self._name).link_type is self._link_type:
+                self._listen(index)
+                self.remark(f"{self._name} vanished and came back")
 
     @property
     def name(self) -> str:
@@ -130,6 +149,7 @@ class PacketRing:
                 for _, event in ready.poll(WAIT_MS):
                     if event & select.POLLERR:
                         self._complain()
+                self._look_for_port()
                 # Looked at before the clock: a block handed over since then is read first.
                 if not self._words[head + STATUS] & OURS:
                     self._until = max(self._until, time.time_ns() - NOT_YET_NS)
@@ -210,23 +230,40 @@ class PacketRing:
             self._socket.close()
 
 
-def _facts(tap: socket.socket, name: str) -> tuple[int, int]:
-    """Returns a port's kind of hardware, and the octets of the longest frame it can carry."""
+class Facts(NamedTuple):
+    """What kind of port it is.
+
+    Attributes:
+        link_type: What its frames begin with, as they are handed over.
+        socket_kind: Whether they are to be handed over with their link header or without.
+        longest: Octets of the longest frame it can carry.
+        is_loopback: Whether it leads back to this machine.
+    """
+
+    link_type: LinkType
+    socket_kind: socket.SocketKind
+    longest: int
+    is_loopback: bool
+
+
+def _facts(name: str) -> Facts:
     request = struct.pack("16s24x", name.encode()[:15])
     try:
-        hardware = struct.unpack_from("H", fcntl.ioctl(tap, GET_HARDWARE, request), 16)[0]
-        mtu = struct.unpack_from("i", fcntl.ioctl(tap, GET_MTU, request), 16)[0]
+        with socket.socket(socket.AF_INET, socket.SOCK_DGRAM) as asked:
+            hardware = struct.unpack_from("H", fcntl.ioctl(asked, GET_HARDWARE, request), 16)[0]
+            mtu = struct.unpack_from("i", fcntl.ioctl(asked, GET_MTU, request), 16)[0]
     except OSError:
         ports = ", ".join(port for _, port in socket.if_nameindex())
         raise TapError(name, got="no such port", wanted=f"one of {ports}") from None
-    return hardware, mtu + ROOM_FOR_HEADER
-
-
-def _link_type(name: str, hardware: int) -> LinkType:
-    if hardware not in LINK_TYPES:
-        raise TapError(
-            name,
-            got=f"a port of hardware type {hardware}",
-            wanted="Ethernet, the loopback or a raw IP tunnel",
-        )
-    return LINK_TYPES[hardware]
+    longest, is_loopback = mtu + ROOM_FOR_HEADER, hardware == LOOPBACK
+    if hardware in ETHERNETS:
+        return Facts(LinkType.ETHERNET, socket.SOCK_RAW, longest, is_loopback)
+    if hardware in RAW_IP:
+        return Facts(LinkType.RAW, socket.SOCK_RAW, longest, is_loopback)
+    if hardware in TUNNELS:
+        return Facts(LinkType.RAW, socket.SOCK_DGRAM, longest, is_loopback)
+    raise TapError(
+        name,
+        got=f"a port of hardware type {hardware}",
+        wanted="Ethernet, the loopback, PPP or an IP tunnel",
+    )

@@ -1,22 +1,32 @@
 """The live ring and its gate, on real frames through a real pair of ports."""
 
+import fcntl
 import json
+import os
 import socket
 import struct
 import subprocess
 import sys
 from contextlib import closing
+from pathlib import Path
 
 import numpy as np
 import pytest
 from wirebuild import ethernet, ip_udp, rtp
 
+from linkwatch.errors import TapError
+from linkwatch.frames import LinkType
 from linkwatch.tap import ring
 from linkwatch.tap.gate import headers_only
 from linkwatch.tap.ring import PacketRing
 
 pytestmark = pytest.mark.lab
 SPEECH = b"\xa7speech\x5a"
+SET_TUNNEL, BARE_TUNNEL = 0x400454CA, 0x1001  # linux/if_tun.h: TUNSETIFF, IFF_TUN | IFF_NO_PI
+
+
+def ip(*words):
+    subprocess.run(["ip", *words], check=True, capture_output=True)
 
 
 @pytest.fixture
@@ -172,12 +182,63 @@ def test_a_port_that_goes_down_is_survived(pair, lab_ports):
     assert tap.counters().up
 
 
-def test_a_port_that_vanishes_is_survived(lab_ports):
-    """A pulled adapter leaves a silent tap whose counters say that the port is gone."""
-    with closing(PacketRing(lab_ports[0])) as tap:
-        subprocess.run(["ip", "link", "del", lab_ports[0]], check=True)
+def test_a_port_that_vanishes_is_survived_and_heard_again_when_it_is_back(lab_ports):
+    """A pulled adapter leaves a silent tap; plugged in again it is heard, as it was at first."""
+    here, there = lab_ports
+    with closing(PacketRing(here)) as tap:
+        ip("link", "del", here)
         assert heard(tap) == []
         assert not tap.counters().up
+        ip("link", "add", here, "type", "veth", "peer", "name", there)
+        for port in (here, there):
+            ip("link", "set", port, "up")
+        heard(tap)
+        with sending_into(there) as out:
+            out.send(speech_frame())
+            ((octets, length),) = [frame for frame in heard(tap, 1) if b"\x45\xb8" in frame[0]]
+        assert (len(octets), length) == (14 + 20 + 8 + 12, len(speech_frame()))
+        assert any("came back" in remark for remark in tap.statistics().remarks)
+
+
+def heard_from_the_ip_packet_on(tap, frame):
+    """Asserts that one frame is heard, its length and its octets counted from its IP packet."""
+    (batch,) = [batch for batch, _ in zip(tap.batches(), range(4), strict=False) if len(batch)]
+    assert batch.link_type is LinkType.RAW
+    assert batch.captured.tolist() == [20 + 8 + 12]
+    assert batch.original.tolist() == [len(frame) - 14]
+    at = int(batch.offsets[0])
+    assert bytes(batch.octets[at : at + 40]) == frame[14:54]
+
+
+def test_a_tunnel_of_bare_ip_packets_is_heard(lab):
+    """Where frames have no link header at all, they begin with the IP packet."""
+    name = f"lw{os.getpid() % 100_000}t"
+    maker = Path("/dev/net/tun")
+    if not maker.exists():
+        pytest.skip("this kernel makes no tunnels")
+    with maker.open("r+b", buffering=0) as tunnel:
+        fcntl.ioctl(tunnel, SET_TUNNEL, struct.pack("16sH22x", name.encode(), BARE_TUNNEL))
+        ip("link", "set", name, "up")
+        with closing(PacketRing(name)) as tap:
+            tunnel.write(speech_frame()[14:])
+            heard_from_the_ip_packet_on(tap, speech_frame())
+
+
+def test_a_port_whose_header_varies_is_heard_from_the_ip_packet_on(lab_ports, monkeypatch):
+    """The kernel takes the link header off; tried on Ethernet, since it has a known one."""
+    monkeypatch.setattr(ring, "ETHERNETS", ())
+    monkeypatch.setattr(ring, "TUNNELS", (1,))
+    here, there = lab_ports
+    with closing(PacketRing(here)) as tap, sending_into(there) as out:
+        out.send(speech_frame())
+        heard_from_the_ip_packet_on(tap, speech_frame())
+
+
+def test_a_port_of_another_kind_is_refused_by_its_number(lab_ports, monkeypatch):
+    """The error says what kind of hardware it is, and which kinds can be read."""
+    monkeypatch.setattr(ring, "ETHERNETS", ())
+    with pytest.raises(TapError, match="hardware type 1; wanted Ethernet"):
+        PacketRing(lab_ports[0])
 
 
 @pytest.mark.parametrize("ethernet_header", [True, False])
